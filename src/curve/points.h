@@ -1,0 +1,96 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// The results, as plain tables: one struct per row of each CSV. Columns, definitions and sources
+// are those of the README's "What the columns mean". An empty optional is an empty cell: not
+// measured, or not measurable on this rig; never a made-up zero.
+#pragma once
+
+#include <optional>
+#include <string>
+#include <string_view>
+#include <vector>
+
+#include "curve/level_scale.h"
+
+namespace kneeprint {
+
+using Cell = std::optional<double>;
+
+/// Doubt that travels with a point. `noise` points are 95 % upper limits, not values.
+enum class Flag { none, floor, noise, alias, clipped, unsteady };
+std::string_view name(Flag flag);  ///< "" for none
+std::optional<Flag> flag_named(std::string_view text);
+
+struct HarmonicPoint {
+  double frequency_hz = 0.0;  ///< as played, after the shift to whole cycles
+  double drive = 0.0;         ///< at the unit's input, rms of the sine, in `unit`
+  LevelUnit unit = LevelUnit::dbfs;
+  int order = 1;
+  Cell level;          ///< rms of the harmonic at the unit's output, in `unit`
+  Cell relative_db;    ///< to the fundamental; 0 for order 1; the upper limit under `noise`
+  Cell phase_deg;      ///< cosine reference, minus n times the output fundamental's, -180 .. 180
+  Cell expanded_u_db;  ///< 95 %, of relative_db; empty for order 1
+  Cell floor_db;       ///< rig floor relative to the fundamental; empty when unknown
+  Flag flag = Flag::none;
+  Cell level_u_db;        ///< 95 %, of level
+  Cell relative_low_db;   ///< 95 % interval's lower end; empty = reaches zero amplitude
+  Cell relative_high_db;  ///< and its upper end
+  // The same harmonic as a phasor in volts peak (or full scales), upright, phase-referenced to the
+  // output fundamental: what the fit uses, unbiased also under the noise.
+  double in_phase = 0.0;
+  double quadrature = 0.0;
+  double component_u = 0.0;  ///< standard uncertainty of each component: noise and rig floor
+  double dof = kInfiniteDof;
+};
+
+struct LevelPoint {
+  double frequency_hz = 0.0;
+  double drive = 0.0;
+  LevelUnit unit = LevelUnit::dbfs;
+  Cell output;  ///< level of the fundamental (on a reel: dB above the lowest usable rung)
+  Cell gain_db, gain_u_db;
+  Cell thd_f_percent, thd_r_percent;
+  int thd_orders = 0;  ///< last order that the THD sums
+  Cell thdn_percent;
+  Cell dc;     ///< volts (or full scales)
+  Cell noise;  ///< level of what is neither DC nor harmonic, 20 Hz to 20 kHz
+  Cell even_odd_db;
+  Flag flag = Flag::none;
+  Cell output_u_db, thd_f_u_percent, thd_r_u_percent, thdn_u_percent, dc_u, noise_u_db,
+      even_odd_u_db;
+  Cell sinad_db, sinad_u_db;
+  Cell polarity;          ///< +1 upright, -1 inverting, empty when it cannot be stated
+  double asked_hz = 0.0;  ///< the frequency the plan named
+  int blocks = 0;         ///< averaged
+  double settled_after_s = 0.0;
+};
+
+struct IntermodPoint {
+  std::string method;  ///< smpte, ccif, ...
+  double f1_hz = 0.0, f2_hz = 0.0;
+  double drive = 0.0;  ///< rms of the sine with the same peak
+  LevelUnit unit = LevelUnit::dbfs;
+  std::string product;  ///< m2, m3, d2, d3, total
+  Cell percent, db, expanded_u_db, floor_db;
+  Flag flag = Flag::none;
+  Cell am_percent, pm_percent;  ///< the pair's amplitude and phase modulation parts
+};
+
+struct ResponsePoint {
+  double frequency_hz = 0.0;  ///< of the fundamental that was played
+  double drive = 0.0;
+  LevelUnit unit = LevelUnit::dbfs;
+  int order = 1;
+  Cell magnitude_db;  ///< level of the order at the output minus drive
+  Cell phase_deg;     ///< order 1: output minus input, the rig's delay removed; else as harmonics
+  Cell expanded_u_db;
+  Flag flag = Flag::none;
+};
+
+struct Curves {
+  std::vector<LevelPoint> levels;
+  std::vector<HarmonicPoint> harmonics;
+  std::vector<IntermodPoint> intermods;
+  std::vector<ResponsePoint> responses;
+};
+
+}  // namespace kneeprint

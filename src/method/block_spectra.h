@@ -1,0 +1,64 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// The steady part of a take as one whole-period spectrum per block, and the mean of a line over blocks
+// with its type A uncertainty.
+#pragma once
+
+#include <complex>
+#include <functional>
+#include <vector>
+
+#include "method/method.h"
+
+namespace kneeprint {
+
+/// Mean of a spectral line over blocks.
+struct Line {
+  std::complex<double> mean;  ///< peak amplitude, cosine reference, after the rotation asked for
+  double u = 0.0;             ///< standard uncertainty of each component of the mean
+  double dof = kInfiniteDof;
+};
+
+class BlockSpectra {
+ public:
+  /// Every block of `hold` in `take`. `stride`: all lines that the stimulus can cause stand on
+  /// multiples of so many bins; the bins between show the noise.
+  BlockSpectra(const Waveform& take, const HoldLayout& hold, std::size_t stride);
+
+  int blocks() const { return static_cast<int>(spectra_.size()); }
+  std::size_t bins() const { return spectra_.front().size(); }
+  double bin_width() const { return bin_width_; }
+  /// Peak amplitude and phase (cosine reference at the block's start) of a bin; bin 0 is the mean.
+  std::complex<double> at(int block, std::size_t bin) const {
+    return spectra_[static_cast<std::size_t>(block)][bin];
+  }
+
+  /// Mean over blocks first .. end-1 of line `bin`, block k rotated by -turn(k) radians first, so that
+  /// slow phase drift (referred to the fundamental) does not blur harmonics.
+  /// u: scatter of the blocks (2(M-1) dof) pooled with the noise of the bins around, unless an F test at
+  /// 0.1 % says that the blocks scatter more than that noise; then the scatter alone.
+  Line mean(std::size_t bin, int first, const std::function<double(int)>& turn) const;
+  /// Per-component standard deviation of the noise around `bin` in one block (median of |Z|^2 over
+  /// neighbours / ln 2, robust against mains lines) and its degrees of freedom; dof 0: no neighbours.
+  struct Noise {
+    double sigma = 0.0;
+    double dof = 0.0;
+  };
+  Noise noise_around(std::size_t bin, int first) const;
+
+  /// Mean square of everything from bin `low` to `high` inclusive, per block.
+  double band_power(int block, std::size_t low, std::size_t high) const;
+
+ private:
+  std::vector<std::vector<std::complex<double>>> spectra_;
+  double bin_width_ = 0.0;
+  std::size_t stride_ = 1;
+};
+
+/// 95 % upper limit of an amplitude that was read as `read` under Gaussian noise of `u` per component
+/// (Rice 1944): the amplitude that would read lower than this in 5 % of cases; never below the level
+/// that noise alone exceeds in 5 %, 2.4477 u.
+double amplitude_upper_limit(double read, double u);
+/// 2.4477 u: what noise alone exceeds in 5 % of cases (Rayleigh).
+double noise_threshold(double u);
+
+}  // namespace kneeprint

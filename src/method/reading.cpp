@@ -1,0 +1,77 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include "method/reading.h"
+
+#include <algorithm>
+#include <array>
+#include <cmath>
+#include <numbers>
+
+namespace kneeprint {
+
+RelativeReading relate(double amplitude, double u, double dof, const Line& reference,
+                       double floor) {
+  const double carrier = std::abs(reference.mean);
+  RelativeReading out;
+  const double ratio = amplitude / carrier;
+  const double own = u / carrier;
+  const std::array parts{Contribution{own, dof},
+                         Contribution{ratio * reference.u / carrier, reference.dof},
+                         Contribution{floor / std::numbers::sqrt2, kInfiniteDof}};
+  const Contribution combined = combine(parts);
+  out.u = combined.u;
+  out.dof = combined.dof;
+  out.ratio = ratio;
+  if (amplitude < noise_threshold(u)) {
+    out.flag = Flag::noise;
+    out.ratio = amplitude_upper_limit(amplitude, u) / carrier;
+  } else if (ratio <= floor) {
+    out.flag = Flag::floor;
+  }
+  return out;
+}
+
+bool reaches_full_scale(const Waveform& take, const HoldLayout& hold) {
+  constexpr double kEnd = 0.9999;
+  const auto begin = take.samples.begin() + static_cast<long>(hold.first_block);
+  return std::any_of(begin, begin + static_cast<long>(hold.end() - hold.first_block),
+                     [](double x) { return std::abs(x) >= kEnd; });
+}
+
+Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,
+                       const TakeSettings& settings, Seconds block) {
+  constexpr double kClearOfNoise = 10.0;  // 20 dB: below, the scatter of a block's level is no longer Gaussian
+  std::vector<std::vector<double>> levels;
+  std::vector<BlockTrend> trends;
+  levels.reserve(bins.size());
+  for (const std::size_t bin : bins) {
+    const double sigma = spectra.noise_around(bin, 0).sigma;
+    std::vector<double> decibels;
+    double smallest = INFINITY;
+    for (int b = 0; b < spectra.blocks(); ++b) {
+      const double amplitude = std::abs(spectra.at(b, bin));
+      smallest = std::min(smallest, amplitude);
+      decibels.push_back(20.0 * std::log10(amplitude));
+    }
+    if (!(smallest > kClearOfNoise * sigma) || smallest <= 0.0) continue;
+    levels.push_back(std::move(decibels));
+    trends.push_back({levels.back(), kDbPerRelative * sigma / smallest});
+  }
+  return find_settled(trends, spectra.blocks(), kept_blocks(settings, block), block,
+                      settings.longest_time_constant, settings.wanted_uncertainty);
+}
+
+int kept_blocks(const TakeSettings& settings, Seconds block) {
+  constexpr int kLeast = 3;  // fewer leave no scatter to speak of
+  const double wanted = settings.block.value() * settings.blocks;
+  return std::max(kLeast, static_cast<int>(std::ceil(wanted / block.value() - 1e-9)));
+}
+
+Flag gravest(std::span<const Flag> flags) {
+  constexpr std::array order{Flag::clipped, Flag::unsteady, Flag::alias, Flag::noise, Flag::floor};
+  for (const Flag f : order) {
+    if (std::find(flags.begin(), flags.end(), f) != flags.end()) return f;
+  }
+  return Flag::none;
+}
+
+}  // namespace kneeprint

@@ -1,0 +1,45 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// What every steady method does with its lines: amplitude over the rig floor and the noise, with its
+// uncertainty; settling; clipping.
+#pragma once
+
+#include <span>
+#include <vector>
+
+#include "method/block_spectra.h"
+#include "method/settling.h"
+
+namespace kneeprint {
+
+inline constexpr double kDbPerRelative = 8.685889638065036;  // 20 / ln 10
+/// Lines from here up are not claimed (share of the sample rate).
+inline constexpr double kHighestShare = 0.45;
+inline constexpr Hertz kBandLow{20.0};
+inline constexpr Hertz kBandHigh{20000.0};
+
+/// An amplitude relative to a reference amplitude.
+struct RelativeReading {
+  double ratio = 0.0;     ///< the value, or the upper limit under `noise`
+  double u = 0.0;         ///< standard uncertainty of the ratio, noise and floor combined
+  double dof = kInfiniteDof;
+  Flag flag = Flag::none;  ///< none, floor, noise
+};
+
+/// `amplitude` with `u` (type A) over the reference line; `floor` is the rig's own share as a ratio (0:
+/// unknown). The floor is a type B term of known amplitude and unknown phase, u = floor / sqrt 2.
+RelativeReading relate(double amplitude, double u, double dof, const Line& reference, double floor);
+
+/// Does any sample reach the converter's end? |x| >= 0.9999 of full scale.
+bool reaches_full_scale(const Waveform& take, const HoldLayout& hold);
+
+/// Settling judged on the lines `bins`, those at least 20 dB above the noise.
+Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,
+                       const TakeSettings& settings, Seconds block);
+
+/// The blocks that are averaged at least, and those that a first attempt plays: one more, for settling.
+int kept_blocks(const TakeSettings& settings, Seconds block);
+
+/// The gravest doubt of several: clipped, unsteady, alias, noise, floor, none.
+Flag gravest(std::span<const Flag> flags);
+
+}  // namespace kneeprint

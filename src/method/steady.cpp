@@ -1,0 +1,381 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include "method/steady.h"
+
+#include <algorithm>
+#include <array>
+#include <cmath>
+#include <numbers>
+
+#include "method/coherent.h"
+#include "method/hold.h"
+#include "method/reading.h"
+
+namespace kneeprint {
+namespace {
+
+// Below this the fundamental is no reference for anything (noise alone passes 5 sigma in 4 of 10^6).
+constexpr double kLeastOverNoise = 5.0;
+constexpr double kDegrees = 180.0 / std::numbers::pi;
+
+CoherentTone tone_of(const TakeSpec& spec, Hertz rate) {
+  return coherent_tone(spec.asked, rate, spec.settings.block, spec.settings.orders);
+}
+
+Seconds block_length(const TakeSpec& spec, Hertz rate) {
+  return Seconds(static_cast<double>(tone_of(spec, rate).block) / rate.value());
+}
+
+int first_hold_blocks(const TakeSpec& spec, Hertz rate) {
+  return kept_blocks(spec.settings, block_length(spec, rate)) + 1;
+}
+
+Stimulus stimulus(const TakeSpec& spec, Hertz rate) {
+  const CoherentTone tone = tone_of(spec, rate);
+  const std::array tones{Tone{tone.frequency, sine_peak(spec.send)}};
+  HeldStimulus held = held_tones(tones, rate, tone.block, spec.hold_blocks);
+  return {std::move(held.wave), held.hold, tone.frequency};
+}
+
+double wrapped_degrees(double radians) {
+  return std::remainder(radians, 2.0 * std::numbers::pi) * kDegrees;
+}
+
+// A figure computed per block, as mean with the standard uncertainty of the mean.
+Uncertain mean_of(const std::vector<double>& values) {
+  const auto n = static_cast<double>(values.size());
+  double sum = 0, squares = 0;
+  for (const double v : values) sum += v;
+  const double mean = sum / n;
+  for (const double v : values) squares += (v - mean) * (v - mean);
+  return {mean, std::sqrt(squares / (n - 1.0) / n), n - 1.0};
+}
+
+Uncertain in_db(const Uncertain& power) {
+  return {10.0 * std::log10(power.value), 0.5 * kDbPerRelative * power.u / power.value, power.dof};
+}
+
+// rss of ratios with propagated uncertainty (JCGM 100:2008 eq. 10: u(D) = sqrt(sum (r u)^2) / D).
+Uncertain root_sum(const std::vector<RelativeReading>& parts) {
+  double sum = 0;
+  std::vector<Contribution> terms;
+  for (const auto& p : parts) sum += p.ratio * p.ratio;
+  const double root = std::sqrt(sum);
+  for (const auto& p : parts) terms.push_back({p.ratio * p.u / root, p.dof});
+  const Contribution c = combine(terms);
+  return {root, c.u, c.dof};
+}
+
+struct Distortion {
+  Uncertain ratio;
+  Flag flag = Flag::none;
+};
+
+// Orders under the noise stay out of the value and widen the uncertainty: between none of them and all
+// of them at their limits lies a rectangular distribution. When every order is under the noise, the
+// figure itself is an upper limit.
+Distortion total(const std::vector<RelativeReading>& orders) {
+  std::vector<RelativeReading> seen, limits;
+  bool any_above_floor = false;
+  for (const auto& r : orders) {
+    (r.flag == Flag::noise ? limits : seen).push_back(r);
+    any_above_floor |= r.flag == Flag::none;
+  }
+  if (seen.empty()) return {root_sum(limits), Flag::noise};
+  Uncertain d = root_sum(seen);
+  if (!limits.empty()) {
+    const double most = std::hypot(d.value, root_sum(limits).value);
+    const std::array parts{Contribution{d.u, d.dof},
+                           Contribution{(most - d.value) / (2.0 * std::sqrt(3.0)), kInfiniteDof}};
+    const Contribution c = combine(parts);
+    d.u = c.u;
+    d.dof = c.dof;
+  }
+  return {d, any_above_floor ? Flag::none : Flag::floor};
+}
+
+class SteadyReading {
+ public:
+  SteadyReading(const TakeSpec& spec, const TakeData& take, const RigView& rig)
+      : spec_(spec),
+        take_(take),
+        rig_(rig),
+        rate_(take.response.rate),
+        tone_(tone_of(spec, rate_)),
+        layout_(stimulus(spec, rate_).hold),
+        spectra_(take.response, layout_, tone_.cycles) {}
+
+  TakeVerdict read(Curves& out);
+
+ private:
+  void read_drive();
+  void read_fundamental(LevelPoint& level);
+  void read_harmonics(Curves& out, LevelPoint& level);
+  void read_residual(LevelPoint& level);
+  void read_dc(LevelPoint& level);
+  HarmonicPoint blank(int order) const;
+  void place(HarmonicPoint& point, const RelativeReading& reading, const Line& line) const;
+
+  std::size_t bin(int order) const { return tone_.cycles * static_cast<std::size_t>(order); }
+  double turn(int block) const { return std::arg(spectra_.at(block, tone_.cycles)); }
+  Line line(int order) const {
+    return spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
+  }
+
+  const TakeSpec& spec_;
+  const TakeData& take_;
+  const RigView& rig_;
+  Hertz rate_;
+  CoherentTone tone_;
+  HoldLayout layout_;
+  BlockSpectra spectra_;
+  int first_ = 0;
+  Flag take_flag_ = Flag::none;
+  Line fundamental_;
+  double drive_ = 0.0;          // level at the unit's input, in the rig's unit
+  LevelDbfs return_level_;
+  double output_type_a_db_ = 0.0;
+};
+
+void SteadyReading::read_drive() {
+  drive_ = rig_.send.level_of(spec_.send);
+  if (take_.reference == nullptr) return;
+  // The reference return carries the drive itself: its level replaces the nominal one.
+  const BlockSpectra reference(*take_.reference, layout_, tone_.cycles);
+  const Line line = reference.mean(tone_.cycles, first_, [&](int b) {
+    return std::arg(reference.at(b, tone_.cycles));
+  });
+  drive_ = rig_.ret.level_of_peak(std::abs(line.mean));
+}
+
+void SteadyReading::read_fundamental(LevelPoint& level) {
+  fundamental_ = line(1);
+  const double peak = std::abs(fundamental_.mean);
+  return_level_ = LevelDbfs(20.0 * std::log10(peak));
+  const double relative_u = fundamental_.u / peak;
+  const double k = coverage_factor_95(fundamental_.dof);
+  output_type_a_db_ = kDbPerRelative * relative_u;
+  level.output = rig_.ret.level_of_peak(peak);
+  level.output_u_db =
+      k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
+  if (rig_.gain_known) {
+    level.gain_db = *level.output - drive_;
+    level.gain_u_db = k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value(),
+                                     rig_.send.standard_uncertainty.value());
+  }
+  // Transfer phase at the block's start, the rig's delay taken out; the stimulus is a cosine of phase 0.
+  const double phase =
+      turn(first_) + 2.0 * std::numbers::pi * tone_.frequency.value() * take_.delay / rate_.value();
+  const double degrees = std::abs(wrapped_degrees(phase));
+  if (degrees < 60.0) level.polarity = 1.0;
+  if (degrees > 120.0) level.polarity = -1.0;
+}
+
+HarmonicPoint SteadyReading::blank(int order) const {
+  HarmonicPoint p;
+  p.frequency_hz = tone_.frequency.value();
+  p.drive = drive_;
+  p.unit = rig_.ret.unit;
+  p.order = order;
+  return p;
+}
+
+void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line& line) const {
+  const double peak = std::abs(fundamental_.mean);
+  const double expanded = coverage_factor_95(r.dof) * r.u;
+  const std::array flags{take_flag_, r.flag};
+  p.flag = gravest(flags);
+  p.level = rig_.ret.level_of_peak(r.ratio * peak);
+  p.relative_db = 20.0 * std::log10(r.ratio);
+  const double level_u =
+      std::hypot(coverage_factor_95(r.dof) * rig_.ret.standard_uncertainty.value(),
+                 kDbPerRelative * expanded / r.ratio);
+  p.level_u_db = level_u;
+  p.in_phase = line.mean.real() * rig_.ret.peak_per_full_scale;
+  p.quadrature = line.mean.imag() * rig_.ret.peak_per_full_scale;
+  p.component_u = r.u * peak * rig_.ret.peak_per_full_scale;
+  p.dof = r.dof;
+  if (p.order == 1) {
+    p.phase_deg = 0.0;
+    p.component_u = line.u * rig_.ret.peak_per_full_scale;
+    p.dof = line.dof;
+    p.level_u_db = coverage_factor_95(line.dof) *
+                   std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
+    return;
+  }
+  p.expanded_u_db = kDbPerRelative * expanded / r.ratio;
+  if (r.flag != Flag::noise) {
+    p.phase_deg = wrapped_degrees(std::arg(line.mean));
+    p.relative_high_db = 20.0 * std::log10(r.ratio + expanded);
+    if (r.ratio > expanded) p.relative_low_db = 20.0 * std::log10(r.ratio - expanded);
+  } else {
+    p.relative_high_db = p.relative_db;
+  }
+}
+
+void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
+  const double highest = kHighestShare * rig_.usable_rate(rate_).value();
+  std::vector<RelativeReading> summed, even, odd;
+  for (int n = 1; n <= spec_.settings.orders; ++n) {
+    HarmonicPoint point = blank(n);
+    ResponsePoint response{point.frequency_hz, drive_, point.unit, n, {}, {}, {}, Flag::none};
+    const double f = n * tone_.frequency.value();
+    if (f >= highest) {
+      const std::array flags{take_flag_, Flag::alias};
+      point.flag = response.flag = gravest(flags);
+    } else {
+      const Line l = line(n);
+      const auto floor_bound =
+          n > 1 ? rig_.floor.at(spec_.send, return_level_, n) : std::nullopt;
+      const double floor = floor_bound.value_or(0.0);
+      RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
+      if (n == 1) r = {1.0, 0.0, l.dof, Flag::none};
+      if (floor_bound && floor > 0.0) point.floor_db = 20.0 * std::log10(floor);
+      place(point, r, l);
+      response.flag = point.flag;
+      if (rig_.gain_known) response.magnitude_db = *point.level - drive_;
+      response.phase_deg = point.phase_deg;
+      response.expanded_u_db = point.level_u_db;
+      if (n == 1) {
+        response.phase_deg =
+            wrapped_degrees(turn(first_) + 2.0 * std::numbers::pi * f * take_.delay / rate_.value());
+      } else if (f < std::min(kBandHigh.value(), highest)) {
+        summed.push_back(r);
+        (n % 2 == 0 ? even : odd).push_back(r);
+        level.thd_orders = n;
+      }
+    }
+    out.harmonics.push_back(point);
+    out.responses.push_back(response);
+  }
+  if (summed.empty()) return;
+  const Distortion thd = total(summed);
+  const double d = thd.ratio.value;
+  const double expanded = coverage_factor_95(thd.ratio.dof) * thd.ratio.u;
+  const double to_r = 1.0 / std::sqrt(1.0 + d * d);  // THD_R = THD_F / sqrt(1 + THD_F^2)
+  level.thd_f_percent = 100.0 * d;
+  level.thd_f_u_percent = 100.0 * expanded;
+  level.thd_r_percent = 100.0 * d * to_r;
+  level.thd_r_u_percent = 100.0 * expanded * to_r * to_r * to_r;
+  const std::array flags{level.flag, thd.flag};
+  level.flag = gravest(flags);
+  if (even.empty() || odd.empty()) return;
+  const Distortion e = total(even), o = total(odd);
+  if (e.flag == Flag::noise || o.flag == Flag::noise) return;
+  level.even_odd_db = 20.0 * std::log10(e.ratio.value / o.ratio.value);
+  const std::array parts{
+      Contribution{kDbPerRelative * e.ratio.u / e.ratio.value, e.ratio.dof},
+      Contribution{kDbPerRelative * o.ratio.u / o.ratio.value, o.ratio.dof}};
+  const Contribution c = combine(parts);
+  level.even_odd_u_db = coverage_factor_95(c.dof) * c.u;
+}
+
+void SteadyReading::read_residual(LevelPoint& level) {
+  const double width = spectra_.bin_width();
+  const auto low = static_cast<std::size_t>(std::ceil(kBandLow.value() / width - 1e-9));
+  const auto high = static_cast<std::size_t>(
+      std::floor(std::min(kBandHigh.value(), kHighestShare * rig_.usable_rate(rate_).value()) / width + 1e-9));
+  if (tone_.cycles < low || tone_.cycles > high) return;
+  std::vector<double> residual, ratio, sinad, noise;
+  for (int b = first_; b < spectra_.blocks(); ++b) {
+    const double fundamental = spectra_.band_power(b, tone_.cycles, tone_.cycles);
+    const double everything = spectra_.band_power(b, low, high);
+    double harmonics = 0.0;
+    for (std::size_t k = tone_.cycles; k <= high; k += tone_.cycles) {
+      harmonics += spectra_.band_power(b, k, k);
+    }
+    const double rest = everything - fundamental;
+    ratio.push_back(rest / everything);
+    sinad.push_back(fundamental / rest);
+    noise.push_back(std::max(everything - harmonics, 0.0));
+  }
+  const Uncertain r = mean_of(ratio);
+  level.thdn_percent = 100.0 * std::sqrt(r.value);
+  level.thdn_u_percent = 100.0 * coverage_factor_95(r.dof) * 0.5 * r.u / std::sqrt(r.value);
+  const Uncertain s = in_db(mean_of(sinad));
+  level.sinad_db = s.value;
+  level.sinad_u_db = expanded_95(s);
+  const Uncertain n = mean_of(noise);
+  if (n.value > 0.0) {
+    const Uncertain db = in_db(n);
+    // Mean square to the level of a sine of that rms.
+    level.noise = db.value + 20.0 * std::log10(std::numbers::sqrt2) + rig_.ret.offset_db;
+    level.noise_u_db =
+        std::hypot(expanded_95(db),
+                   coverage_factor_95(db.dof) * rig_.ret.standard_uncertainty.value());
+  }
+}
+
+void SteadyReading::read_dc(LevelPoint& level) {
+  if (!rig_.sees_dc) return;
+  const Line dc = spectra_.mean(0, first_, [](int) { return 0.0; });
+  level.dc = dc.mean.real() * rig_.ret.peak_per_full_scale;
+  // The mean has one component, not two: its own scatter is sqrt 2 of what a line's component shows.
+  level.dc_u = coverage_factor_95(dc.dof) * std::numbers::sqrt2 * dc.u *
+               rig_.ret.peak_per_full_scale;
+}
+
+TakeVerdict SteadyReading::read(Curves& out) {
+  const double highest = kHighestShare * rig_.usable_rate(rate_).value();
+  std::vector<std::size_t> watched;
+  for (int n = 1; n <= 3 && n * tone_.frequency.value() < highest; ++n) watched.push_back(bin(n));
+  const Seconds block(static_cast<double>(layout_.block) / rate_.value());
+  const Settled settled = judge_settling(spectra_, watched, spec_.settings, block);
+  first_ = settled.first;
+
+  LevelPoint level;
+  TakeVerdict verdict;
+  verdict.settled = settled.settled;
+  verdict.clipped = reaches_full_scale(take_.response, layout_);
+  if (!settled.settled) take_flag_ = Flag::unsteady;
+  if (verdict.clipped) take_flag_ = Flag::clipped;
+  level.flag = take_flag_;
+
+  read_drive();
+  level.frequency_hz = tone_.frequency.value();
+  level.asked_hz = spec_.asked.value();
+  level.drive = drive_;
+  level.unit = rig_.ret.unit;
+  level.blocks = spectra_.blocks() - first_;
+  level.settled_after_s = first_ * block.value();
+  if (std::abs(spectra_.at(first_, tone_.cycles)) <= 0.0) {
+    // Digital silence: there is no fundamental to refer anything to.
+    level.flag = Flag::noise;
+    out.levels.push_back(level);
+    return verdict;
+  }
+  read_fundamental(level);
+  if (std::abs(fundamental_.mean) < kLeastOverNoise * fundamental_.u) {
+    level.flag = Flag::noise;
+    out.levels.push_back(level);
+    return verdict;
+  }
+  read_harmonics(out, level);
+  read_residual(level);
+  read_dc(level);
+  out.levels.push_back(level);
+  if (level.flag != Flag::noise) verdict.thd_f_percent = level.thd_f_percent;
+  verdict.output_level = level.output;
+  return verdict;
+}
+
+TakeVerdict read(const TakeSpec& spec, const TakeData& take, const RigView& rig, Curves& out) {
+  return SteadyReading(spec, take, rig).read(out);
+}
+
+}  // namespace
+
+Hertz steady_frequency(const TakeSpec& spec, Hertz rate) { return tone_of(spec, rate).frequency; }
+
+Method steady_sine() {
+  return {"steady",
+          "steady sine",
+          "AES17-2015; IEEE Std 1057-2017",
+          true,
+          first_hold_blocks,
+          block_length,
+          stimulus,
+          read,
+          nullptr};
+}
+
+}  // namespace kneeprint

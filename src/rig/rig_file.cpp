@@ -1,0 +1,155 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include "rig/rig_file.h"
+
+#include <fmt/format.h>
+
+#include <array>
+#include <nlohmann/json.hpp>
+#include <utility>
+
+#include "platform/json_fields.h"
+#include "platform/read_text.h"
+
+namespace kneeprint {
+namespace {
+
+constexpr const char* kFormat = "kneeprint-rig";
+constexpr int kVersion = 1;
+
+constexpr std::array<std::pair<RigKind, const char*>, 3> kKinds{
+    {{RigKind::virtual_rig, "virtual"}, {RigKind::live, "live"}, {RigKind::reel, "reel"}}};
+const std::vector<std::string> kTaps{"terminals", "second-output"};
+const std::vector<std::string> kWirings{"balanced", "pin 3 grounded", "pin 3 open", "unbalanced"};
+
+const char* kind_name(RigKind kind) {
+  for (const auto& [k, text] : kKinds) {
+    if (k == kind) return text;
+  }
+  return "";
+}
+
+nlohmann::ordered_json direction_json(int channel, const LevelScale& scale, bool dc_coupled) {
+  nlohmann::ordered_json j;
+  j["channel"] = channel;
+  if (scale.is_calibrated()) {
+    j["full_scale_v_rms"] = to_volts(LevelDbu(scale.offset_db)).value();
+    j["full_scale_u_db"] = scale.standard_uncertainty.value();
+  }
+  j["dc_coupled"] = dc_coupled;
+  return j;
+}
+
+struct Direction {
+  int channel = 1;
+  LevelScale scale;
+  bool dc_coupled = false;
+};
+
+Direction read_direction(const JsonFields& f) {
+  f.allow_only({"channel", "full_scale_v_rms", "full_scale_u_db", "dc_coupled"});
+  Direction d;
+  if (f.has("channel")) d.channel = f.integer("channel", 1, 256);
+  if (f.has("full_scale_v_rms")) {
+    const VoltsRms full_scale(f.number("full_scale_v_rms", {1e-4, 1e4}));
+    // Without its uncertainty a full scale is no calibration.
+    d.scale = LevelScale::calibrated(full_scale, Decibels(f.number("full_scale_u_db", {0.0, 10.0})));
+  } else if (f.has("full_scale_u_db")) {
+    f.refuse("full_scale_u_db", "stands without full_scale_v_rms; give both or neither");
+  }
+  if (f.has("dc_coupled")) d.dc_coupled = f.boolean("dc_coupled");
+  return d;
+}
+
+}  // namespace
+
+std::string rig_json(const Rig& rig) {
+  nlohmann::ordered_json j;
+  j["format"] = kFormat;
+  j["version"] = kVersion;
+  j["name"] = rig.name;
+  j["kind"] = kind_name(rig.kind);
+  if (!rig.device.empty()) j["device"] = rig.device;
+  j["rate_hz"] = rig.rate.value();
+  if (rig.recorded_rate) j["recorded_rate_hz"] = rig.recorded_rate->value();
+  j["send"] = direction_json(rig.send_channel, rig.send_scale, rig.dc_coupled_send);
+  j["return"] = direction_json(rig.return_channel, rig.return_scale, rig.dc_coupled_return);
+  if (rig.reference_channel) {
+    j["reference"] = {{"channel", *rig.reference_channel}, {"tap", rig.reference_tap}};
+  }
+  if (!rig.wiring.empty()) j["wiring"] = rig.wiring;
+  if (rig.source_impedance) j["source_impedance_ohm"] = rig.source_impedance->value();
+  if (rig.load_impedance) j["load_impedance_ohm"] = rig.load_impedance->value();
+  if (rig.ceiling_dbfs) j["ceiling_dbfs"] = *rig.ceiling_dbfs;
+  if (!rig.calibrated_on.empty()) j["calibrated_on"] = rig.calibrated_on;
+  if (rig.invented) j["invented"] = true;
+  if (rig.floor.known()) {
+    j["floor"] = nlohmann::ordered_json::array();
+    for (const FloorPoint& p : rig.floor.points()) {
+      j["floor"].push_back({{"level_dbfs", p.level.value()},
+                            {"order", p.order},
+                            {"relative_db", p.relative.value()}});
+    }
+  }
+  return j.dump(2) + "\n";
+}
+
+Rig parse_rig(const std::string& json, const std::string& origin) {
+  const nlohmann::json value = parse_json(json, origin);
+  const JsonFields f(value, origin);
+  f.check_format(kFormat, kVersion);
+  f.allow_only({"format", "version", "name", "kind", "device", "rate_hz", "recorded_rate_hz", "send",
+                "return", "reference", "wiring", "source_impedance_ohm", "load_impedance_ohm",
+                "ceiling_dbfs", "calibrated_on", "invented", "floor"});
+  Rig rig;
+  rig.name = f.text("name");
+  const std::string kind = f.choice("kind", "kind", {"virtual", "live", "reel"});
+  for (const auto& [k, text] : kKinds) {
+    if (kind == text) rig.kind = k;
+  }
+  if (rig.kind == RigKind::live || f.has("device")) rig.device = f.text("device");
+  rig.rate = Hertz(f.number("rate_hz", {8000.0, 192000.0}));
+  if (f.has("recorded_rate_hz")) {
+    rig.recorded_rate = Hertz(f.number("recorded_rate_hz", {4000.0, 1e6}));
+  }
+  const Direction send = read_direction(f.object("send")), ret = read_direction(f.object("return"));
+  rig.send_channel = send.channel;
+  rig.send_scale = send.scale;
+  rig.dc_coupled_send = send.dc_coupled;
+  rig.return_channel = ret.channel;
+  rig.return_scale = ret.scale;
+  rig.dc_coupled_return = ret.dc_coupled;
+  if (send.scale.is_calibrated() != ret.scale.is_calibrated()) {
+    f.refuse(send.scale.is_calibrated() ? "return" : "send",
+             "has no full_scale_v_rms while the other direction has; give both or neither");
+  }
+  if (f.has("reference")) {
+    const JsonFields r = f.object("reference");
+    r.allow_only({"channel", "tap"});
+    rig.reference_channel = r.integer("channel", 1, 256);
+    rig.reference_tap = r.choice("tap", "tap", kTaps);
+  }
+  if (f.has("wiring")) rig.wiring = f.choice("wiring", "wiring", kWirings);
+  if (f.has("source_impedance_ohm")) {
+    rig.source_impedance = Ohms(f.number("source_impedance_ohm", {0.0, 1e9}));
+  }
+  if (f.has("load_impedance_ohm")) {
+    rig.load_impedance = Ohms(f.number("load_impedance_ohm", {0.1, 1e12}));
+  }
+  if (f.has("ceiling_dbfs")) rig.ceiling_dbfs = f.number("ceiling_dbfs", {-140.0, 0.0});
+  if (f.has("calibrated_on")) rig.calibrated_on = f.text("calibrated_on");
+  if (f.has("invented")) rig.invented = f.boolean("invented");
+  if (f.has("floor")) {
+    std::vector<FloorPoint> points;
+    for (const JsonFields& p : f.objects("floor")) {
+      p.allow_only({"level_dbfs", "order", "relative_db"});
+      points.push_back({LevelDbfs(p.number("level_dbfs", {-140.0, 0.0})), p.integer("order", 2, 20),
+                        Decibels(p.number("relative_db", {-400.0, 0.0}))});
+    }
+    rig.floor = RigFloor(std::move(points));
+  }
+  return rig;
+}
+
+Rig read_rig(const std::filesystem::path& file) { return parse_rig(read_text(file), file.string()); }
+
+}  // namespace kneeprint

@@ -1,0 +1,341 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <cmath>
+#include <map>
+
+#include "platform/os.h"
+#include "print/folder.h"
+#include "quantity/failure.h"
+#include "run/chain_check.h"
+#include "run/continuity.h"
+#include "run/measure.h"
+#include "run/take_reading.h"
+
+namespace kneeprint {
+namespace {
+
+constexpr int kMostAttempts = 3;
+constexpr LevelDbfs kReturnRoom{-0.5};      // the next rung is not played when it would come back hotter
+constexpr Seconds kUnknownLatency{1.0};     // recorded after the chain check's chirp
+constexpr Seconds kAfterTake{0.05};         // and after each take, beyond the known delay
+constexpr double kLargestClockOffset = 0.2;  // ppm
+
+std::vector<Waveform> channels_of(const Player& player, Hertz rate) {
+  std::vector<Waveform> out;
+  out.push_back({rate, {player.returned().begin(), player.returned().end()}});
+  if (!player.reference().empty()) {
+    out.push_back({rate, {player.reference().begin(), player.reference().end()}});
+  }
+  return out;
+}
+
+// The part of a recording that answers the stimulus, aligned to the nearest sample.
+std::vector<Waveform> aligned(std::vector<Waveform> recorded, long delay, std::size_t length) {
+  for (Waveform& w : recorded) {
+    std::vector<double> cut(length, 0.0);
+    for (std::size_t n = 0; n < length; ++n) {
+      const long from = static_cast<long>(n) + delay;
+      if (from >= 0 && from < static_cast<long>(w.samples.size())) {
+        cut[n] = w.samples[static_cast<std::size_t>(from)];
+      }
+    }
+    w.samples = std::move(cut);
+  }
+  return recorded;
+}
+
+double peak_dbfs(const Waveform& w) {
+  double peak = 1e-12;
+  for (const double x : w.samples) peak = std::max(peak, std::abs(x));
+  return 20.0 * std::log10(peak);
+}
+
+class Climb {
+ public:
+  Climb(const MeasureRequest& request, Port& port, Progress& progress)
+      : request_(request),
+        port_(port),
+        progress_(progress),
+        folder_(request.into),
+        ceiling_(ceiling_of(request.plan, request.rig, request.ceiling, request.has_rig_file)),
+        ladder_(ladder_of(request.plan, request.rig, ceiling_)),
+        guard_({ceiling_, LevelDbfs(-0.1), Seconds(0.003)}, request.rig.rate) {}
+
+  ClimbEnd run();
+
+ private:
+  void open_folder();
+  void check_chain();
+  TakeVerdict take(const TakeSpec& first, int number);
+  TakeVerdict play(TakeSpec spec, int number, std::vector<Waveform>& response, int& attempts);
+  std::vector<Waveform> record(const Waveform& stimulus, std::size_t tail, int number);
+  void announce(const TakeSpec& spec, int number);
+  std::optional<ClimbEnd> plan_says_stop(const std::vector<TakeVerdict>& verdicts, std::size_t rung);
+  ClimbEnd finish(ClimbEnd end);
+  std::string drive_text(LevelDbfs send) const;
+  Seconds duration_of(std::size_t rung) const;
+
+  const MeasureRequest& request_;
+  Port& port_;
+  Progress& progress_;
+  PrintFolder folder_;
+  LevelDbfs ceiling_;
+  Ladder ladder_;
+  Guard guard_;
+  Journal kept_;
+  ChainCheck chain_;
+  double return_peak_ = -240.0;          // dBFS, of the hottest take so far
+  std::vector<std::optional<double>> lowest_gain_;  // dB, per take of a rung
+};
+
+std::string Climb::drive_text(LevelDbfs send) const {
+  const LevelScale scale = view_of(request_.rig).send;
+  return fmt::format("{:.1f} {}", scale.level_of(send), name(scale.unit));
+}
+
+void Climb::open_folder() {
+  const std::string plan = plan_json(request_.plan), rig = rig_json(request_.rig);
+  // A run that was killed while it began left no journal: then there is nothing to go on with yet.
+  if (!request_.resume || !folder_.exists()) {
+    folder_.begin(plan, rig, {request_.unit, request_.seed, os::utc_now(), "kneeprint"});
+    return;
+  }
+  if (read_text(folder_.plan_file()) != plan || read_text(folder_.rig_file()) != rig) {
+    throw InputError(fmt::format(
+        "{}: the plan or the rig differs from the one this measurement was begun with; resume with the "
+        "same --plan and rig options",
+        folder_.path().string()));
+  }
+  kept_ = read_journal(folder_.journal_file(), true);
+  // A take whose file is missing or damaged is taken again.
+  std::erase_if(kept_.takes, [&](const JournalTake& t) {
+    try {
+      folder_.load_take(t);
+      return false;
+    } catch (const InputError& e) {
+      progress_.say(fmt::format("{} The take is made again.", e.what()));
+      return true;
+    }
+  });
+}
+
+std::vector<Waveform> Climb::record(const Waveform& stimulus, std::size_t tail, int number) {
+  Player player(stimulus, tail, port_.info().has_reference, guard_);
+  port_.play(player, number);
+  if (guard_.reason() != GuardReason::none) throw GuardStop(sentence(guard_.reason()));
+  if (player.dropouts() > 0) return {};
+  return channels_of(player, request_.rig.rate);
+}
+
+void Climb::check_chain() {
+  const Waveform chirp = chain_check_stimulus(
+      request_.rig.rate, chain_check_level(ladder_.rungs.front(), ceiling_));
+  std::vector<Waveform> recorded;
+  for (int attempt = 1; recorded.empty(); ++attempt) {
+    if (attempt > kMostAttempts) {
+      throw DeviceError(
+          "chain check: the audio driver lost frames three times in a row. Use a larger buffer, close "
+          "other programs, then start again.");
+    }
+    recorded = record(chirp, samples_in(kUnknownLatency, request_.rig.rate), 0);
+  }
+  chain_ = judge_chain(chirp, recorded);
+  progress_.say(chain_.sentence);
+  JournalTake line;
+  line.method = "chain-check";
+  line.send_dbfs = peak_dbfs(chirp);
+  line.delay_samples = chain_.delay;
+  line.started = line.ended = os::utc_now();
+  folder_.keep_take(line, recorded);
+}
+
+Seconds Climb::duration_of(std::size_t rung) const {
+  Seconds sum{0.0};
+  for (const TakeSpec& spec :
+       takes_of_rung(request_.plan, request_.rig, ladder_.rungs[rung], static_cast<int>(rung))) {
+    sum = sum + find_method(spec.method)->stimulus(spec, request_.rig.rate).wave.duration();
+  }
+  return sum;
+}
+
+void Climb::announce(const TakeSpec& spec, int number) {
+  const auto rungs = static_cast<int>(ladder_.rungs.size());
+  const int each = takes_per_rung(request_.plan);
+  ProgressStep step;
+  step.take = number;
+  step.takes = rungs * each;
+  step.what = spec.asked.value() > 0.0 ? fmt::format("{} {:g} Hz", spec.method, spec.asked.value())
+                                       : spec.method;
+  step.drive = drive_text(spec.send);
+  const double rung_s = duration_of(static_cast<std::size_t>(spec.rung)).value();
+  step.left = Seconds(rung_s * static_cast<double>(step.takes - number + 1) / each);
+  progress_.step(step);
+}
+
+// Plays until a take is whole: at most three times when the driver or the take itself shows a loss.
+TakeVerdict Climb::play(TakeSpec spec, int number, std::vector<Waveform>& response, int& attempts) {
+  const Hertz rate = request_.rig.rate;
+  const Stimulus stimulus = find_method(spec.method)->stimulus(spec, rate);
+  const long delay = std::lround(chain_.delay);
+  const std::size_t tail =
+      static_cast<std::size_t>(std::max(0L, delay)) + samples_in(kAfterTake, rate);
+  for (attempts = 1; attempts <= kMostAttempts; ++attempts) {
+    std::vector<Waveform> recorded = record(stimulus.wave, tail, number);
+    if (recorded.empty()) {
+      progress_.say(fmt::format("take {}: the driver lost frames; it is made again", number));
+      continue;
+    }
+    response = aligned(std::move(recorded), delay, stimulus.wave.samples.size());
+    const Continuity c = check_continuity(response.front(), stimulus.hold);
+    if (c.jumped) {
+      progress_.say(fmt::format(
+          "take {}: frames were lost or repeated near {:.2f} s without a word from the driver; it is "
+          "made again",
+          number, c.at_s));
+      continue;
+    }
+    if (port_.info().live && std::abs(c.clock_ppm) > kLargestClockOffset) {
+      throw DeviceError(fmt::format(
+          "take {}: send and return run on different clocks, {:+.2f} ppm apart. Use one interface for "
+          "both, or lock them to one word clock.",
+          number, c.clock_ppm));
+    }
+    Curves unused;
+    const TakeData data{response.front(), response.size() > 1 ? &response[1] : nullptr,
+                        chain_.delay - static_cast<double>(delay)};
+    return find_method(spec.method)->read(spec, data, view_of(request_.rig), unused);
+  }
+  throw DeviceError(fmt::format(
+      "take {}: the audio device lost frames {} times in a row. Use a larger buffer, close other "
+      "programs, check the clock source; then go on with --resume.",
+      number, kMostAttempts));
+}
+
+TakeVerdict Climb::take(const TakeSpec& first, int number) {
+  const auto line = std::find_if(kept_.takes.begin(), kept_.takes.end(),
+                                 [&](const JournalTake& t) { return t.number == number; });
+  if (line != kept_.takes.end()) {
+    Curves unused;
+    return_peak_ = std::max(return_peak_, peak_dbfs(folder_.load_take(*line).front()));
+    return read_take(folder_, *line, request_.plan, request_.rig, unused);
+  }
+  const Method& method = *find_method(first.method);
+  const Seconds block = method.block_length(first, request_.rig.rate);
+  const int most = std::max(
+      first.hold_blocks,
+      static_cast<int>(std::floor(request_.plan.settle_limit.value() / block.value() + 1e-9)));
+  TakeSpec spec = first;
+  JournalTake kept;
+  kept.started = os::utc_now();
+  std::vector<Waveform> response;
+  TakeVerdict verdict;
+  while (true) {
+    announce(spec, number);
+    verdict = play(spec, number, response, kept.attempts);
+    if (verdict.settled || spec.hold_blocks >= most) break;
+    spec.hold_blocks = std::min(2 * spec.hold_blocks, most);
+  }
+  kept.number = number;
+  kept.method = spec.method;
+  kept.frequency_hz = spec.asked.value();
+  kept.rung = spec.rung;
+  kept.send_dbfs = spec.send.value();
+  kept.hold_s = spec.hold_blocks * block.value();
+  kept.delay_samples = chain_.delay - static_cast<double>(std::lround(chain_.delay));
+  kept.ended = os::utc_now();
+  return_peak_ = std::max(return_peak_, peak_dbfs(response.front()));
+  folder_.keep_take(kept, response);
+  return verdict;
+}
+
+std::optional<ClimbEnd> Climb::plan_says_stop(const std::vector<TakeVerdict>& verdicts,
+                                              std::size_t rung) {
+  const Plan& plan = request_.plan;
+  lowest_gain_.resize(verdicts.size());
+  for (std::size_t i = 0; i < verdicts.size(); ++i) {
+    const TakeVerdict& v = verdicts[i];
+    if (plan.stop_thd_f_percent && v.thd_f_percent && *v.thd_f_percent >= *plan.stop_thd_f_percent) {
+      return ClimbEnd{"thd",
+                      fmt::format("the ladder ends at {}: THD_F has reached {:.3g} % (the plan stops at "
+                                  "{:g} %)",
+                                  drive_text(ladder_.rungs[rung]), *v.thd_f_percent,
+                                  *plan.stop_thd_f_percent),
+                      false};
+    }
+    if (!v.output_level) continue;
+    const double gain = *v.output_level - ladder_.rungs[rung].value();
+    if (!lowest_gain_[i]) lowest_gain_[i] = gain;
+    const double compression = *lowest_gain_[i] - gain;
+    if (plan.stop_compression && compression >= plan.stop_compression->value()) {
+      return ClimbEnd{"compression",
+                      fmt::format("the ladder ends at {}: compression has reached {:.2f} dB (the plan "
+                                  "stops at {:g} dB)",
+                                  drive_text(ladder_.rungs[rung]), compression,
+                                  plan.stop_compression->value()),
+                      false};
+    }
+  }
+  return std::nullopt;
+}
+
+ClimbEnd Climb::finish(ClimbEnd end) {
+  if (!end.stop.empty()) {
+    progress_.say(end.sentence);
+    folder_.keep_stop({end.stop, end.sentence, os::utc_now()});
+  }
+  return end;
+}
+
+ClimbEnd Climb::run() {
+  open_folder();
+  try {
+    check_chain();
+    for (std::size_t rung = 0; rung < ladder_.rungs.size(); ++rung) {
+      const LevelDbfs send = ladder_.rungs[rung];
+      if (rung > 0) {
+        const Decibels step = send - ladder_.rungs[rung - 1];
+        const LevelDbfs expected = LevelDbfs(return_peak_) + step;
+        if (expected > kReturnRoom) {
+          return finish({"return-hot",
+                         fmt::format("stopped below {}: the return would reach {:.1f} dBFS. Turn the "
+                                     "input gain down or put a pad before the return to go further.",
+                                     drive_text(send), expected.value()),
+                         true});
+        }
+      }
+      std::vector<TakeVerdict> verdicts;
+      const auto specs =
+          takes_of_rung(request_.plan, request_.rig, send, static_cast<int>(rung));
+      for (std::size_t i = 0; i < specs.size(); ++i) {
+        if (os::interrupted()) {
+          return finish({"cancelled", "stopped by hand; what was taken is kept (--resume goes on)",
+                         true});
+        }
+        verdicts.push_back(take(specs[i], take_number(request_.plan, static_cast<int>(rung),
+                                                      static_cast<int>(i))));
+      }
+      if (auto end = plan_says_stop(verdicts, rung)) return finish(*end);
+    }
+  } catch (const GuardStop& stop) {
+    return finish({guard_.reason() == GuardReason::none ? "return-hot" : std::string(name(guard_.reason())),
+                   stop.what(), true});
+  } catch (const Failure& failure) {
+    folder_.keep_stop({"device", failure.what(), os::utc_now()});
+    throw;
+  }
+  if (ladder_.cut_by_ceiling) {
+    return finish({"ceiling",
+                   fmt::format("the ladder ends at the ceiling of {}", drive_text(ceiling_)), false});
+  }
+  return {};
+}
+
+}  // namespace
+
+ClimbEnd climb(const MeasureRequest& request, Port& port, Progress& progress) {
+  return Climb(request, port, progress).run();
+}
+
+}  // namespace kneeprint

@@ -1,0 +1,63 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include "run/take_reading.h"
+
+#include <fmt/format.h>
+
+#include <cmath>
+
+#include "curve/upright.h"
+#include "quantity/failure.h"
+
+namespace kneeprint {
+
+TakeSpec spec_of(const JournalTake& take, const Plan& plan, const Rig& rig) {
+  for (TakeSpec spec : takes_of_rung(plan, rig, LevelDbfs(take.send_dbfs), take.rung)) {
+    if (spec.method != take.method || spec.asked.value() != take.frequency_hz) continue;
+    const Seconds block = find_method(spec.method)->block_length(spec, rig.rate);
+    spec.hold_blocks = static_cast<int>(std::lround(take.hold_s / block.value()));
+    return spec;
+  }
+  throw InputError(fmt::format(
+      "journal.jsonl: take {} ({}, {} Hz) is not one of the plan's: plan.json was changed after the "
+      "measurement; put the original back",
+      take.number, take.method, take.frequency_hz));
+}
+
+TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
+                      const Rig& rig, Curves& out) {
+  const TakeSpec spec = spec_of(take, plan, rig);
+  const Method& method = *find_method(spec.method);
+  const std::vector<Waveform> channels = folder.load_take(take);
+  const std::size_t expected = method.stimulus(spec, rig.rate).wave.samples.size();
+  for (const Waveform& channel : channels) {
+    if (channel.samples.size() != expected || channel.rate != rig.rate) {
+      throw InputError(fmt::format("{}: {} frames at {} Hz, expected {} at {} Hz", take.file,
+                                   channel.samples.size(), channel.rate.value(), expected,
+                                   rig.rate.value()));
+    }
+  }
+  const TakeData data{channels.front(), channels.size() > 1 ? &channels[1] : nullptr,
+                      take.delay_samples};
+  return method.read(spec, data, view_of(rig), out);
+}
+
+Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan& plan,
+                  const Rig& rig) {
+  Curves curves;
+  for (const JournalTake& take : journal.takes) {
+    if (take.rung >= 0) read_take(folder, take, plan, rig, curves);
+  }
+  if (curves.levels.empty() && curves.intermods.empty()) {
+    throw NothingUsable(fmt::format("{}: no take of the ladder was kept, so there is nothing to read",
+                                    folder.path().string()));
+  }
+  make_upright(curves, polarity_of(curves, plan));
+  if (!view_of(rig).gain_known) make_relative(curves, fit_frequency(plan));
+  return curves;
+}
+
+int polarity_of(const Curves& curves, const Plan& plan) {
+  return stated_polarity(curves, fit_frequency(plan));
+}
+
+}  // namespace kneeprint

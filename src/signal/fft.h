@@ -1,0 +1,22 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// Real discrete Fourier transforms by FFTW, with plans made once per length and kept.
+#pragma once
+
+#include <complex>
+#include <cstddef>
+#include <span>
+#include <vector>
+
+namespace kneeprint {
+
+/// X[k] = sum_n x[n] exp(-j 2 pi k n / N), k = 0 .. N/2 (unnormalised). N >= 1, any factors.
+/// Thread-safe; the plan of each length is made on first use (FFTW_ESTIMATE: bit-repeatable) and reused.
+std::vector<std::complex<double>> forward_fft(std::span<const double> x);
+
+/// The inverse, divided by N. `spectrum` has size/2 + 1 values.
+std::vector<double> inverse_fft(std::span<const std::complex<double>> spectrum, std::size_t size);
+
+/// Smallest 2^a 3^b 5^c >= n: a length that FFTW transforms fast.
+std::size_t fast_length(std::size_t n);
+
+}  // namespace kneeprint
