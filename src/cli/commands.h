@@ -20,7 +20,7 @@ void add_analyse(CLI::App& app, ExitCode& code);
 void add_fit(CLI::App& app, ExitCode& code);
 void add_report(CLI::App& app, ExitCode& code);
 
-inline constexpr std::array<AddCommand, 5> kCommands{
-    add_devices, add_measure, add_analyse, add_fit, add_report};
+inline constexpr std::array<AddCommand, 7> kCommands{
+    add_devices, add_measure, add_reel, add_ingest, add_analyse, add_fit, add_report};
 
 }  // namespace kneeprint::cli

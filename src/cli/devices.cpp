@@ -34,8 +34,8 @@ void add_devices(CLI::App& app, ExitCode&) {
     }
     if (devices.empty()) std::cout << "no live audio device\n";
     for (const DeviceInfo& d : devices) {
-      std::cout << fmt::format("{:>3}  {} ({}): {} in, {} out, {:g} Hz\n", d.index, d.name, d.host_api,
-                               d.inputs, d.outputs, d.default_rate.value());
+      std::cout << fmt::format("{:>3}  {} ({}): {} in, {} out, {:g} Hz\n", d.index, d.name,
+                               d.host_api, d.inputs, d.outputs, d.default_rate.value());
     }
     for (const UnitRecord& u : virtual_units()) {
       std::cout << fmt::format("     virtual:{}  {}\n", u.id, u.title);

@@ -26,7 +26,8 @@ ExitCode run(const Options& o) {
   MeasureRequest request;
   request.into = o.into;
   request.resume = o.resume;
-  // A run that goes on takes the plan it was begun with, unless one is named (and then must equal it).
+  // A run that goes on takes the plan it was begun with, unless one is named (and then must equal
+  // it).
   if (o.resume && o.plan.empty() && folder.exists()) {
     request.plan =
         parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_ids());
@@ -34,9 +35,10 @@ ExitCode run(const Options& o) {
     request.plan = load_plan(o.plan.empty() ? "portrait" : o.plan, method_ids());
   }
   if (!o.resume && folder.exists()) {
-    throw InputError(o.into +
-                     ": there is a measurement here already; name another folder, or go on with it by "
-                     "--resume");
+    throw InputError(
+        o.into +
+        ": there is a measurement here already; name another folder, or go on with it by "
+        "--resume");
   }
   OpenRig open = open_rig(o.rig, o.armed, o.seed, request.plan.orders);
   check_rate(request.plan, open.rig.rate);
@@ -68,8 +70,7 @@ void add_measure(CLI::App& app, ExitCode& code) {
   auto* command = app.add_subcommand("measure", "measure a unit, fit its curve, write the report");
   auto o = std::make_shared<Options>();
   command->add_option("--into", o->into, "folder for the kneeprint")->required();
-  command->add_option("--plan", o->plan,
-                      "glance, portrait (the default), atlas, or a plan file");
+  command->add_option("--plan", o->plan, "glance, portrait (the default), atlas, or a plan file");
   add_rig_options(*command, o->rig);
   command->add_option("--unit", o->unit, "what is measured: maker, model, settings");
   command->add_option("--seed", o->seed, "seed of a virtual rig")->capture_default_str();

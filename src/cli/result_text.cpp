@@ -25,7 +25,8 @@ std::string fit_text(const Model& model) {
   if (best.sharpness) text += parameter_text("sharpness", *best.sharpness, "");
   if (best.extrapolated) {
     text += fmt::format(
-        "  the limit is extrapolated: the output reached {:.0f} % of it; families not rejected put it "
+        "  the limit is extrapolated: the output reached {:.0f} % of it; families not rejected put "
+        "it "
         "between {:.4g} and {:.4g} {}\n",
         100.0 * best.reach, model.fit.limit_low, model.fit.limit_high, model.axis_unit);
   }
@@ -40,9 +41,8 @@ std::string result_text(const std::filesystem::path& folder, const Published& pu
     j["takes"] = published.takes;
     j["stop"] = end.stop;
     j["stop_sentence"] = end.sentence;
-    j["model"] = published.model
-                     ? nlohmann::ordered_json::parse(model_json(*published.model))
-                     : nlohmann::ordered_json(nullptr);
+    j["model"] = published.model ? nlohmann::ordered_json::parse(model_json(*published.model))
+                                 : nlohmann::ordered_json(nullptr);
     j["why_no_model"] = published.why_no_model;
     return j.dump(2) + "\n";
   }

@@ -31,7 +31,8 @@ void require_armed(bool armed) {
   if (armed) return;
   throw UsageError(
       "a live rig plays only when armed: mute or unpatch monitors and headphones, meter the unit's "
-      "output for DC before you patch it, then repeat with --armed. The first tone is the chain check, "
+      "output for DC before you patch it, then repeat with --armed. The first tone is the chain "
+      "check, "
       "at -40 dBFS or less.");
 }
 
@@ -75,13 +76,16 @@ void add_rig_options(CLI::App& command, RigOptions& options) {
       ->excludes(rig);
   command.add_option("--send", options.send, "output channel, from 1")->check(CLI::PositiveNumber);
   command.add_option("--return", options.ret, "input channel, from 1")->check(CLI::PositiveNumber);
-  command.add_option("--reference", options.reference,
-                     "input channel patched straight from the send, from 1")
+  command
+      .add_option("--reference", options.reference,
+                  "input channel patched straight from the send, from 1")
       ->check(CLI::PositiveNumber);
-  command.add_option("--rate", options.rate, "sample rate, Hz")->check(CLI::Range(8000.0, 192000.0));
-  command.add_option("--ceiling", options.ceiling_dbfs,
-                     "highest level that may leave, dBFS; a live device without a rig file stays at "
-                     "-20 until you name another")
+  command.add_option("--rate", options.rate, "sample rate, Hz")
+      ->check(CLI::Range(8000.0, 192000.0));
+  command
+      .add_option("--ceiling", options.ceiling_dbfs,
+                  "highest level that may leave, dBFS; a live device without a rig file stays at "
+                  "-20 until you name another")
       ->check(CLI::Range(-120.0, 0.0));
 }
 
@@ -93,8 +97,8 @@ OpenRig open_rig(const RigOptions& options, bool armed, std::uint64_t seed, int 
   if (options.rig.starts_with(kVirtual)) return open_virtual(options, seed, orders);
   const Rig rig = read_rig(options.rig);  // a bad file is told before a missing --armed
   if (rig.kind == RigKind::virtual_rig) {
-    throw UsageError(fmt::format("{} describes a virtual rig; name it as --rig {}", options.rig,
-                                 rig.device));
+    throw UsageError(
+        fmt::format("{} describes a virtual rig; name it as --rig {}", options.rig, rig.device));
   }
   require_armed(armed);
   return open_file(options);

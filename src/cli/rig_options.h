@@ -28,8 +28,8 @@ struct OpenRig {
   bool has_rig_file = false;
 };
 
-/// Opens what the options name. A live rig is refused without `armed` (UsageError), with what arming means.
-/// `orders`: how many orders a virtual rig's floor is measured to.
+/// Opens what the options name. A live rig is refused without `armed` (UsageError), with what
+/// arming means. `orders`: how many orders a virtual rig's floor is measured to.
 OpenRig open_rig(const RigOptions& options, bool armed, std::uint64_t seed, int orders);
 
 }  // namespace kneeprint::cli

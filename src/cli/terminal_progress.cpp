@@ -28,9 +28,8 @@ void TerminalProgress::clear_line() {
 }
 
 void TerminalProgress::step(const ProgressStep& step) {
-  const std::string line =
-      fmt::format("take {} of {}: {}, {}, at most {} of sound left", step.take, step.takes, step.what,
-                  step.drive, duration_text(step.left));
+  const std::string line = fmt::format("take {} of {}: {}, {}, at most {} of sound left", step.take,
+                                       step.takes, step.what, step.drive, duration_text(step.left));
   if (!terminal_) {
     std::cerr << line << '\n';
     return;

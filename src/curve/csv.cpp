@@ -14,8 +14,8 @@
 #include <variant>
 #include <vector>
 
-#include "quantity/failure.h"
 #include "platform/read_text.h"
+#include "quantity/failure.h"
 
 namespace kneeprint {
 namespace {
@@ -111,6 +111,8 @@ std::span<const Column<IntermodPoint>> columns() {
       {"flag", &P::flag},
       {"am_percent", &P::am_percent},
       {"pm_percent", &P::pm_percent},
+      {"blocks", &P::blocks},
+      {"settled_after_s", &P::settled_after_s},
   };
   return list;
 }

@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The rig floor: what the rig alone shows, a cable in place of the unit, at the same converter levels.
+// The rig floor: what the rig alone shows, a cable in place of the unit, at the same converter
+// levels.
 #pragma once
 
 #include <optional>

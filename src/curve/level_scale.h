@@ -12,11 +12,13 @@ namespace kneeprint {
 enum class LevelUnit { dbfs, dbu };
 std::string_view name(LevelUnit unit);  ///< "dBFS", "dBu"
 
-/// Scale of one direction (send or return). Uncalibrated: levels are dBFS and "volts" are full scales.
+/// Scale of one direction (send or return). Uncalibrated: levels are dBFS and "volts" are full
+/// scales.
 struct LevelScale {
   LevelUnit unit = LevelUnit::dbfs;
-  double offset_db = 0.0;      ///< level in `unit` of a full-scale sine
-  double peak_per_full_scale = 1.0;  ///< volts peak (calibrated) or 1 (full scales) at sample value 1
+  double offset_db = 0.0;  ///< level in `unit` of a full-scale sine
+  double peak_per_full_scale =
+      1.0;  ///< volts peak (calibrated) or 1 (full scales) at sample value 1
   Decibels standard_uncertainty{0.0};  ///< of the full-scale voltage, type B; 0 when uncalibrated
 
   static LevelScale uncalibrated() { return {}; }

@@ -73,6 +73,8 @@ struct IntermodPoint {
   Cell percent, db, expanded_u_db, floor_db;
   Flag flag = Flag::none;
   Cell am_percent, pm_percent;  ///< the pair's amplitude and phase modulation parts
+  int blocks = 0;               ///< averaged
+  double settled_after_s = 0.0;
 };
 
 struct ResponsePoint {

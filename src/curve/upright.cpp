@@ -76,7 +76,8 @@ void make_relative(Curves& curves, double asked_hz) {
 
 std::optional<bool> depends_on_frequency(const Curves& curves) {
   constexpr double kSmallest = 0.5;  // dB
-  constexpr double kSameRung = 0.5;  // dB: drives read from a reference differ a little per frequency
+  constexpr double kSameRung =
+      0.5;  // dB: drives read from a reference differ a little per frequency
   constexpr double kExpandedToThreeSigma = 3.0 / 1.96;
   std::optional<bool> answer;
   for (const HarmonicPoint& a : curves.harmonics) {

@@ -34,7 +34,8 @@ BlockSpectra::BlockSpectra(const Waveform& take, const HoldLayout& hold, std::si
 
 BlockSpectra::Noise BlockSpectra::noise_around(std::size_t bin, int first) const {
   std::vector<double> powers;
-  const auto top = static_cast<long>(bins()) - 2;  // the last bin may be Nyquist: real, half the power
+  const auto top =
+      static_cast<long>(bins()) - 2;  // the last bin may be Nyquist: real, half the power
   for (int side : {-1, 1}) {
     int taken = 0;
     for (long k = static_cast<long>(bin) + side; k >= 1 && k <= top && taken < kNeighboursEachSide;
@@ -97,8 +98,8 @@ double amplitude_upper_limit(double read, double u) {
   // With amplitude nu, (read/u)^2 is non-central chi-square with 2 dof and non-centrality (nu/u)^2.
   // Below the 5 % point of noise alone no amplitude satisfies the condition; `least` stands then.
   if (normalised <= -2.0 * std::log(0.95)) return least;
-  const double centrality = boost::math::non_central_chi_squared::find_non_centrality(
-      2.0, normalised, 0.05);
+  const double centrality =
+      boost::math::non_central_chi_squared::find_non_centrality(2.0, normalised, 0.05);
   return std::max(least, u * std::sqrt(centrality));
 }
 

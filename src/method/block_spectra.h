@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The steady part of a take as one whole-period spectrum per block, and the mean of a line over blocks
-// with its type A uncertainty.
+// The steady part of a take as one whole-period spectrum per block, and the mean of a line over
+// blocks with its type A uncertainty.
 #pragma once
 
 #include <complex>
@@ -32,13 +32,14 @@ class BlockSpectra {
     return spectra_[static_cast<std::size_t>(block)][bin];
   }
 
-  /// Mean over blocks first .. end-1 of line `bin`, block k rotated by -turn(k) radians first, so that
-  /// slow phase drift (referred to the fundamental) does not blur harmonics.
-  /// u: scatter of the blocks (2(M-1) dof) pooled with the noise of the bins around, unless an F test at
-  /// 0.1 % says that the blocks scatter more than that noise; then the scatter alone.
+  /// Mean over blocks first .. end-1 of line `bin`, block k rotated by -turn(k) radians first, so
+  /// that slow phase drift (referred to the fundamental) does not blur harmonics. u: scatter of the
+  /// blocks (2(M-1) dof) pooled with the noise of the bins around, unless an F test at 0.1 % says
+  /// that the blocks scatter more than that noise; then the scatter alone.
   Line mean(std::size_t bin, int first, const std::function<double(int)>& turn) const;
   /// Per-component standard deviation of the noise around `bin` in one block (median of |Z|^2 over
-  /// neighbours / ln 2, robust against mains lines) and its degrees of freedom; dof 0: no neighbours.
+  /// neighbours / ln 2, robust against mains lines) and its degrees of freedom; dof 0: no
+  /// neighbours.
   struct Noise {
     double sigma = 0.0;
     double dof = 0.0;
@@ -54,9 +55,9 @@ class BlockSpectra {
   std::size_t stride_ = 1;
 };
 
-/// 95 % upper limit of an amplitude that was read as `read` under Gaussian noise of `u` per component
-/// (Rice 1944): the amplitude that would read lower than this in 5 % of cases; never below the level
-/// that noise alone exceeds in 5 %, 2.4477 u.
+/// 95 % upper limit of an amplitude that was read as `read` under Gaussian noise of `u` per
+/// component (Rice 1944): the amplitude that would read lower than this in 5 % of cases; never
+/// below the level that noise alone exceeds in 5 %, 2.4477 u.
 double amplitude_upper_limit(double read, double u);
 /// 2.4477 u: what noise alone exceeds in 5 % of cases (Rayleigh).
 double noise_threshold(double u);

@@ -19,7 +19,8 @@ struct Clearance {
   double hertz;
   Seconds longest_block;
 };
-constexpr Clearance kClearances[] = {{1.0, Seconds(2.0)}, {0.2, kLongestBlock}, {0.1, kLongestBlock}};
+constexpr Clearance kClearances[] = {
+    {1.0, Seconds(2.0)}, {0.2, kLongestBlock}, {0.1, kLongestBlock}};
 
 bool clear_of_mains(double f, int orders, double clearance) {
   for (int n = 1; n <= orders; ++n) {
@@ -34,7 +35,8 @@ struct Grid {
   std::size_t samples, first, last;  // block = multiple * samples, multiples first .. last
 };
 
-// The tone of the shortest block that has one at this clearance; a clearance of 0 takes the nearest.
+// The tone of the shortest block that has one at this clearance; a clearance of 0 takes the
+// nearest.
 CoherentTone shortest(Hertz asked, Hertz rate, int orders, Grid grid, double clearance) {
   for (std::size_t multiple = grid.first; multiple <= grid.last; ++multiple) {
     const std::size_t block = multiple * grid.samples;
@@ -69,7 +71,8 @@ CoherentTone coherent_tone(Hertz asked, Hertz rate, Seconds wanted, int orders) 
   }
   const CoherentTone nearest = shortest(asked, rate, orders, up_to(kLongestBlock), 0.0);
   if (nearest.cycles != 0) return nearest;
-  // Only below 0.1 Hz, or at a rate under 10 Hz, does no multiple serve: one block of one cycle then.
+  // Only below 0.1 Hz, or at a rate under 10 Hz, does no multiple serve: one block of one cycle
+  // then.
   const auto block = static_cast<std::size_t>(std::llround(rate.value() / asked.value()));
   return {Hertz(rate.value() / static_cast<double>(block)), block, 1};
 }

@@ -10,8 +10,8 @@ namespace {
 
 constexpr TonePair kCcif{"ccif", Hertz(19000.0), Hertz(20000.0), 0.5, 0.5, false};
 
-// For a weakly curved rig at the same peak: d2 = HD2 / 2 and d3 = 3/4 HD3 (expansion of a cubic with
-// U = P / 2: a2 U / 2 a1 over a2 P / 2 a1, and 3/4 a3 U^2 / a1 over a3 P^2 / 4 a1).
+// For a weakly curved rig at the same peak: d2 = HD2 / 2 and d3 = 3/4 HD3 (expansion of a cubic
+// with U = P / 2: a2 U / 2 a1 over a2 P / 2 a1, and 3/4 a3 U^2 / a1 over a3 P^2 / 4 a1).
 constexpr double kSecondOverHarmonic = 0.5;
 constexpr double kThirdOverHarmonic = 0.75;
 
@@ -35,8 +35,8 @@ TakeVerdict read(const TakeSpec& spec, const TakeData& take, const RigView& rig,
 }
 
 std::vector<PredictedProduct> predict(const TwoToneCurve& curve, double peak) {
-  const auto a = curve(kCcif.share1 * peak, kCcif.share2 * peak,
-                       {{1, 0}, {0, 1}, {-1, 1}, {2, -1}, {-1, 2}});
+  const auto a =
+      curve(kCcif.share1 * peak, kCcif.share2 * peak, {{1, 0}, {0, 1}, {-1, 1}, {2, -1}, {-1, 2}});
   const double both = std::abs(a[0]) + std::abs(a[1]);
   const double d2 = std::abs(a[2]) / both;
   const double d3 = (std::abs(a[3]) + std::abs(a[4])) / both;

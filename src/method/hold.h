@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The stimulus of every steady method: silence, a raised-cosine rise, whole blocks of steady tones, a
-// raised-cosine fall, silence.
+// The stimulus of every steady method: silence, a raised-cosine rise, whole blocks of steady tones,
+// a raised-cosine fall, silence.
 #pragma once
 
 #include <span>
@@ -19,12 +19,13 @@ struct Tone {
 /// times its steady peak (common practice; see DEVELOPERS.md, "Ramps").
 Seconds ramp_length(Hertz lowest);
 
-/// Silence kept before and after, and steady time left between ramp and first block, so that filters'
-/// ringing and a fraction of delay never reach a block.
+/// Silence kept before and after, and steady time left between ramp and first block, so that
+/// filters' ringing and a fraction of delay never reach a block.
 inline constexpr Seconds kHoldMargin{0.010};
 
 /// `tones` held for `blocks` blocks of `block` samples. When `tail_blocks` > 0, the tones marked by
-/// `tail` sound on alone for that many blocks after the others have faded; `tail_start` then tells where.
+/// `tail` sound on alone for that many blocks after the others have faded; `tail_start` then tells
+/// where.
 struct HeldStimulus {
   Waveform wave;
   HoldLayout hold;

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// A method is what is played together with what is read from the response. One pair of files and one
-// registry line each; nothing else in the program knows the methods by name.
+// A method is what is played together with what is read from the response. One pair of files and
+// one registry line each; nothing else in the program knows the methods by name.
 #pragma once
 
 #include <algorithm>
@@ -20,18 +20,18 @@ namespace kneeprint {
 
 /// What a plan asks of every take, whatever its method.
 struct TakeSettings {
-  int orders = 10;                       ///< highest harmonic read
-  Seconds block{0.5};                    ///< wanted; lengthened where whole cycles need it
-  int blocks = 4;                        ///< wanted average; at least 3 are kept
-  Seconds longest_time_constant{0.5};    ///< of the unit
-  Decibels wanted_uncertainty{0.01};     ///< remaining change that counts as settled
+  int orders = 10;                     ///< highest harmonic read
+  Seconds block{0.5};                  ///< wanted; lengthened where whole cycles need it
+  int blocks = 4;                      ///< wanted average; at least 3 are kept
+  Seconds longest_time_constant{0.5};  ///< of the unit
+  Decibels wanted_uncertainty{0.01};   ///< remaining change that counts as settled
 };
 
 /// One take: this method, this frequency, this drive, held for so many blocks.
 struct TakeSpec {
   std::string method;
-  Hertz asked{0.0};    ///< 0 for methods that fix their tones
-  LevelDbfs send;      ///< rms of the sine with the same peak
+  Hertz asked{0.0};  ///< 0 for methods that fix their tones
+  LevelDbfs send;    ///< rms of the sine with the same peak
   int rung = 0;
   int hold_blocks = 0;  ///< blocks played; the first ones may be dropped as settling
   TakeSettings settings;
@@ -47,7 +47,7 @@ struct HoldLayout {
 
 struct Stimulus {
   Waveform wave;
-  HoldLayout hold;             ///< periodic from block to block: repeated and lost frames show there
+  HoldLayout hold;  ///< periodic from block to block: repeated and lost frames show there
   Hertz lowest_tone{0.0};
 };
 
@@ -65,7 +65,8 @@ struct RigView {
   bool sees_dc = false;
   /// A reel without declared levels: gain and volts stay empty, output is made relative later.
   bool gain_known = true;
-  /// Lower than the take's own rate when a reel was recorded at another: what it can show ends there.
+  /// Lower than the take's own rate when a reel was recorded at another: what it can show ends
+  /// there.
   std::optional<Hertz> recorded_rate;
 
   Hertz usable_rate(Hertz take_rate) const {
@@ -81,7 +82,8 @@ struct TakeVerdict {
   std::optional<double> output_level;   ///< of the fundamental, in the return's unit
 };
 
-/// Signed peak amplitudes of the products (k1, k2) of a curve driven by two sines of peaks u1 and u2.
+/// Signed peak amplitudes of the products (k1, k2) of a curve driven by two sines of peaks u1 and
+/// u2.
 using TwoToneCurve = std::function<std::vector<double>(
     double u1, double u2, const std::vector<std::pair<int, int>>& products)>;
 
@@ -92,16 +94,16 @@ struct PredictedProduct {
 
 struct Method {
   std::string_view id;
-  std::string_view title;    ///< for pages
-  std::string_view source;   ///< published definition
-  bool wants_frequency;      ///< the plan lists frequencies for it
+  std::string_view title;                                 ///< for pages
+  std::string_view source;                                ///< published definition
+  bool wants_frequency;                                   ///< the plan lists frequencies for it
   int (*first_hold_blocks)(const TakeSpec&, Hertz rate);  ///< blocks for a unit without memory
   Seconds (*block_length)(const TakeSpec&, Hertz rate);
   Stimulus (*stimulus)(const TakeSpec&, Hertz rate);
   /// Appends points to `out`. Never throws for bad data: it flags.
   TakeVerdict (*read)(const TakeSpec&, const TakeData&, const RigView&, Curves& out);
-  /// The same products by a memoryless curve, for the stimulus' peak at the unit's input; nullptr for
-  /// methods that the fit itself uses.
+  /// The same products by a memoryless curve, for the stimulus' peak at the unit's input; nullptr
+  /// for methods that the fit itself uses.
   std::vector<PredictedProduct> (*predict)(const TwoToneCurve&, double peak);
 };
 

@@ -16,8 +16,9 @@ constexpr TonePair kSmpte{"smpte", Hertz(60.0), Hertz(7000.0), 0.8, 0.2, true};
 constexpr double kSecondOverHarmonic = 3.2;
 constexpr double kThirdOverHarmonic = 3.84;
 
-// Amplitude and phase modulation parts of a sideband pair, as indices of the carrier: with the upper
-// and lower sideband referred to carrier and modulating tone, AM is |u + conj(l)|, PM |u - conj(l)|.
+// Amplitude and phase modulation parts of a sideband pair, as indices of the carrier: with the
+// upper and lower sideband referred to carrier and modulating tone, AM is |u + conj(l)|, PM |u -
+// conj(l)|.
 void split_modulation(IntermodPoint& point, const Line& upper, const Line& lower,
                       const Line& carrier) {
   const double c = std::abs(carrier.mean);
@@ -45,8 +46,8 @@ TakeVerdict read(const TakeSpec& spec, const TakeData& take, const RigView& rig,
 }
 
 std::vector<PredictedProduct> predict(const TwoToneCurve& curve, double peak) {
-  const auto a = curve(kSmpte.share1 * peak, kSmpte.share2 * peak,
-                       {{0, 1}, {-1, 1}, {1, 1}, {-2, 1}, {2, 1}});
+  const auto a =
+      curve(kSmpte.share1 * peak, kSmpte.share2 * peak, {{0, 1}, {-1, 1}, {1, 1}, {-2, 1}, {2, 1}});
   const double carrier = std::abs(a[0]);
   const double m2 = (std::abs(a[1]) + std::abs(a[2])) / carrier;
   const double m3 = (std::abs(a[3]) + std::abs(a[4])) / carrier;

@@ -21,7 +21,7 @@ RelativeReading relate(double amplitude, double u, double dof, const Line& refer
   out.u = combined.u;
   out.dof = combined.dof;
   out.ratio = ratio;
-  if (amplitude < noise_threshold(u)) {
+  if (amplitude <= noise_threshold(u)) {
     out.flag = Flag::noise;
     out.ratio = amplitude_upper_limit(amplitude, u) / carrier;
   } else if (ratio <= floor) {
@@ -39,7 +39,8 @@ bool reaches_full_scale(const Waveform& take, const HoldLayout& hold) {
 
 Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,
                        const TakeSettings& settings, Seconds block) {
-  constexpr double kClearOfNoise = 10.0;  // 20 dB: below, the scatter of a block's level is no longer Gaussian
+  constexpr double kClearOfNoise =
+      10.0;  // 20 dB: below, the scatter of a block's level is no longer Gaussian
   std::vector<std::vector<double>> levels;
   std::vector<BlockTrend> trends;
   levels.reserve(bins.size());

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// What every steady method does with its lines: amplitude over the rig floor and the noise, with its
-// uncertainty; settling; clipping.
+// What every steady method does with its lines: amplitude over the rig floor and the noise, with
+// its uncertainty; settling; clipping.
 #pragma once
 
 #include <span>
@@ -19,14 +19,15 @@ inline constexpr Hertz kBandHigh{20000.0};
 
 /// An amplitude relative to a reference amplitude.
 struct RelativeReading {
-  double ratio = 0.0;     ///< the value, or the upper limit under `noise`
-  double u = 0.0;         ///< standard uncertainty of the ratio, noise and floor combined
+  double ratio = 0.0;  ///< the value, or the upper limit under `noise`
+  double u = 0.0;      ///< standard uncertainty of the ratio, noise and floor combined
   double dof = kInfiniteDof;
   Flag flag = Flag::none;  ///< none, floor, noise
 };
 
-/// `amplitude` with `u` (type A) over the reference line; `floor` is the rig's own share as a ratio (0:
-/// unknown). The floor is a type B term of known amplitude and unknown phase, u = floor / sqrt 2.
+/// `amplitude` with `u` (type A) over the reference line; `floor` is the rig's own share as a ratio
+/// (0: unknown). The floor is a type B term of known amplitude and unknown phase, u = floor /
+/// sqrt 2.
 RelativeReading relate(double amplitude, double u, double dof, const Line& reference, double floor);
 
 /// Does any sample reach the converter's end? |x| >= 0.9999 of full scale.
@@ -36,7 +37,8 @@ bool reaches_full_scale(const Waveform& take, const HoldLayout& hold);
 Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,
                        const TakeSettings& settings, Seconds block);
 
-/// The blocks that are averaged at least, and those that a first attempt plays: one more, for settling.
+/// The blocks that are averaged at least, and those that a first attempt plays: one more, for
+/// settling.
 int kept_blocks(const TakeSettings& settings, Seconds block);
 
 /// The gravest doubt of several: clipped, unsteady, alias, noise, floor, none.

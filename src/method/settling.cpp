@@ -13,8 +13,8 @@ struct Remaining {
   double u = 0.0;
 };
 
-// y_k = a + b q^k by least squares over blocks `from` .. end, for the time constant on a logarithmic
-// grid that fits best.
+// y_k = a + b q^k by least squares over blocks `from` .. end, for the time constant on a
+// logarithmic grid that fits best.
 Remaining remaining_change(const BlockTrend& trend, int from, int first, Seconds block,
                            Seconds longest) {
   const auto count = static_cast<int>(trend.decibels.size());
@@ -55,8 +55,8 @@ Remaining remaining_change(const BlockTrend& trend, int from, int first, Seconds
 Settled find_settled(std::span<const BlockTrend> trends, int blocks, int keep, Seconds block,
                      Seconds longest_time_constant, Decibels wanted) {
   for (int first = 0; first + keep <= blocks; ++first) {
-    // One block before the kept ones is in the fit too: three kept blocks alone cannot hold a fit of
-    // three parameters.
+    // One block before the kept ones is in the fit too: three kept blocks alone cannot hold a fit
+    // of three parameters.
     const int from = std::max(0, first - 1);
     const bool all = std::all_of(trends.begin(), trends.end(), [&](const BlockTrend& t) {
       const Remaining r = remaining_change(t, from, first, block, longest_time_constant);

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Has the unit settled? An exponential is fitted over the blocks; what it has still to change, averaged
-// over the blocks that would be kept, must be below the wanted uncertainty. (That two neighbouring
-// blocks agree proves nothing: a time constant of 20 s passes that at once.)
+// Has the unit settled? An exponential is fitted over the blocks; what it has still to change,
+// averaged over the blocks that would be kept, must be below the wanted uncertainty. (That two
+// neighbouring blocks agree proves nothing: a time constant of 20 s passes that at once.)
 #pragma once
 
 #include <span>
@@ -22,8 +22,8 @@ struct Settled {
 };
 
 /// The earliest first block that leaves at least `keep` blocks and satisfies every trend; when none
-/// does, the last `keep` blocks. A remaining change within three of its own standard uncertainties counts
-/// as none. `keep` <= number of blocks.
+/// does, the last `keep` blocks. A remaining change within three of its own standard uncertainties
+/// counts as none. `keep` <= number of blocks.
 Settled find_settled(std::span<const BlockTrend> trends, int blocks, int keep, Seconds block,
                      Seconds longest_time_constant, Decibels wanted);
 

@@ -13,7 +13,8 @@
 namespace kneeprint {
 namespace {
 
-// Below this the fundamental is no reference for anything (noise alone passes 5 sigma in 4 of 10^6).
+// Below this the fundamental is no reference for anything (noise alone passes 5 sigma in 4 of
+// 10^6).
 constexpr double kLeastOverNoise = 5.0;
 constexpr double kDegrees = 180.0 / std::numbers::pi;
 
@@ -60,6 +61,7 @@ Uncertain root_sum(const std::vector<RelativeReading>& parts) {
   std::vector<Contribution> terms;
   for (const auto& p : parts) sum += p.ratio * p.ratio;
   const double root = std::sqrt(sum);
+  if (root == 0.0) return {0.0, 0.0, kInfiniteDof};
   for (const auto& p : parts) terms.push_back({p.ratio * p.u / root, p.dof});
   const Contribution c = combine(terms);
   return {root, c.u, c.dof};
@@ -70,9 +72,9 @@ struct Distortion {
   Flag flag = Flag::none;
 };
 
-// Orders under the noise stay out of the value and widen the uncertainty: between none of them and all
-// of them at their limits lies a rectangular distribution. When every order is under the noise, the
-// figure itself is an upper limit.
+// Orders under the noise stay out of the value and widen the uncertainty: between none of them and
+// all of them at their limits lies a rectangular distribution. When every order is under the noise,
+// the figure itself is an upper limit.
 Distortion total(const std::vector<RelativeReading>& orders) {
   std::vector<RelativeReading> seen, limits;
   bool any_above_floor = false;
@@ -131,7 +133,7 @@ class SteadyReading {
   int first_ = 0;
   Flag take_flag_ = Flag::none;
   Line fundamental_;
-  double drive_ = 0.0;          // level at the unit's input, in the rig's unit
+  double drive_ = 0.0;  // level at the unit's input, in the rig's unit
   LevelDbfs return_level_;
   double output_type_a_db_ = 0.0;
 };
@@ -141,9 +143,8 @@ void SteadyReading::read_drive() {
   if (take_.reference == nullptr) return;
   // The reference return carries the drive itself: its level replaces the nominal one.
   const BlockSpectra reference(*take_.reference, layout_, tone_.cycles);
-  const Line line = reference.mean(tone_.cycles, first_, [&](int b) {
-    return std::arg(reference.at(b, tone_.cycles));
-  });
+  const Line line = reference.mean(tone_.cycles, first_,
+                                   [&](int b) { return std::arg(reference.at(b, tone_.cycles)); });
   drive_ = rig_.ret.level_of_peak(std::abs(line.mean));
 }
 
@@ -155,14 +156,14 @@ void SteadyReading::read_fundamental(LevelPoint& level) {
   const double k = coverage_factor_95(fundamental_.dof);
   output_type_a_db_ = kDbPerRelative * relative_u;
   level.output = rig_.ret.level_of_peak(peak);
-  level.output_u_db =
-      k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
+  level.output_u_db = k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
   if (rig_.gain_known) {
     level.gain_db = *level.output - drive_;
     level.gain_u_db = k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value(),
                                      rig_.send.standard_uncertainty.value());
   }
-  // Transfer phase at the block's start, the rig's delay taken out; the stimulus is a cosine of phase 0.
+  // Transfer phase at the block's start, the rig's delay taken out; the stimulus is a cosine of
+  // phase 0.
   const double phase =
       turn(first_) + 2.0 * std::numbers::pi * tone_.frequency.value() * take_.delay / rate_.value();
   const double degrees = std::abs(wrapped_degrees(phase));
@@ -184,6 +185,7 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
   const double expanded = coverage_factor_95(r.dof) * r.u;
   const std::array flags{take_flag_, r.flag};
   p.flag = gravest(flags);
+  if (!(r.ratio > 0.0)) return;  // exactly nothing, as only arithmetic gives it: no level to state
   p.level = rig_.ret.level_of_peak(r.ratio * peak);
   p.relative_db = 20.0 * std::log10(r.ratio);
   const double level_u =
@@ -224,20 +226,19 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       point.flag = response.flag = gravest(flags);
     } else {
       const Line l = line(n);
-      const auto floor_bound =
-          n > 1 ? rig_.floor.at(spec_.send, return_level_, n) : std::nullopt;
+      const auto floor_bound = n > 1 ? rig_.floor.at(spec_.send, return_level_, n) : std::nullopt;
       const double floor = floor_bound.value_or(0.0);
       RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
       if (n == 1) r = {1.0, 0.0, l.dof, Flag::none};
       if (floor_bound && floor > 0.0) point.floor_db = 20.0 * std::log10(floor);
       place(point, r, l);
       response.flag = point.flag;
-      if (rig_.gain_known) response.magnitude_db = *point.level - drive_;
+      if (rig_.gain_known && point.level) response.magnitude_db = *point.level - drive_;
       response.phase_deg = point.phase_deg;
       response.expanded_u_db = point.level_u_db;
       if (n == 1) {
-        response.phase_deg =
-            wrapped_degrees(turn(first_) + 2.0 * std::numbers::pi * f * take_.delay / rate_.value());
+        response.phase_deg = wrapped_degrees(turn(first_) + 2.0 * std::numbers::pi * f *
+                                                                take_.delay / rate_.value());
       } else if (f < std::min(kBandHigh.value(), highest)) {
         summed.push_back(r);
         (n % 2 == 0 ? even : odd).push_back(r);
@@ -250,6 +251,7 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
   if (summed.empty()) return;
   const Distortion thd = total(summed);
   const double d = thd.ratio.value;
+  if (!(d > 0.0)) return;
   const double expanded = coverage_factor_95(thd.ratio.dof) * thd.ratio.u;
   const double to_r = 1.0 / std::sqrt(1.0 + d * d);  // THD_R = THD_F / sqrt(1 + THD_F^2)
   level.thd_f_percent = 100.0 * d;
@@ -261,10 +263,10 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
   if (even.empty() || odd.empty()) return;
   const Distortion e = total(even), o = total(odd);
   if (e.flag == Flag::noise || o.flag == Flag::noise) return;
+  if (!(e.ratio.value > 0.0) || !(o.ratio.value > 0.0)) return;
   level.even_odd_db = 20.0 * std::log10(e.ratio.value / o.ratio.value);
-  const std::array parts{
-      Contribution{kDbPerRelative * e.ratio.u / e.ratio.value, e.ratio.dof},
-      Contribution{kDbPerRelative * o.ratio.u / o.ratio.value, o.ratio.dof}};
+  const std::array parts{Contribution{kDbPerRelative * e.ratio.u / e.ratio.value, e.ratio.dof},
+                         Contribution{kDbPerRelative * o.ratio.u / o.ratio.value, o.ratio.dof}};
   const Contribution c = combine(parts);
   level.even_odd_u_db = coverage_factor_95(c.dof) * c.u;
 }
@@ -272,23 +274,26 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
 void SteadyReading::read_residual(LevelPoint& level) {
   const double width = spectra_.bin_width();
   const auto low = static_cast<std::size_t>(std::ceil(kBandLow.value() / width - 1e-9));
-  const auto high = static_cast<std::size_t>(
-      std::floor(std::min(kBandHigh.value(), kHighestShare * rig_.usable_rate(rate_).value()) / width + 1e-9));
+  const auto high = static_cast<std::size_t>(std::floor(
+      std::min(kBandHigh.value(), kHighestShare * rig_.usable_rate(rate_).value()) / width + 1e-9));
   if (tone_.cycles < low || tone_.cycles > high) return;
   std::vector<double> residual, ratio, sinad, noise;
   for (int b = first_; b < spectra_.blocks(); ++b) {
     const double fundamental = spectra_.band_power(b, tone_.cycles, tone_.cycles);
-    const double everything = spectra_.band_power(b, low, high);
-    double harmonics = 0.0;
+    // Summed, never subtracted from the whole: the difference of two nearly equal sums may be
+    // negative.
+    double harmonics = 0.0, between = spectra_.band_power(b, low, tone_.cycles - 1);
     for (std::size_t k = tone_.cycles; k <= high; k += tone_.cycles) {
-      harmonics += spectra_.band_power(b, k, k);
+      if (k > tone_.cycles) harmonics += spectra_.band_power(b, k, k);
+      between += spectra_.band_power(b, k + 1, std::min(high, k + tone_.cycles - 1));
     }
-    const double rest = everything - fundamental;
-    ratio.push_back(rest / everything);
+    const double rest = harmonics + between;
+    ratio.push_back(rest / (fundamental + rest));
     sinad.push_back(fundamental / rest);
-    noise.push_back(std::max(everything - harmonics, 0.0));
+    noise.push_back(between);
   }
   const Uncertain r = mean_of(ratio);
+  if (!(r.value > 0.0)) return;  // a take without any residual: arithmetic, not a measurement
   level.thdn_percent = 100.0 * std::sqrt(r.value);
   level.thdn_u_percent = 100.0 * coverage_factor_95(r.dof) * 0.5 * r.u / std::sqrt(r.value);
   const Uncertain s = in_db(mean_of(sinad));
@@ -299,9 +304,8 @@ void SteadyReading::read_residual(LevelPoint& level) {
     const Uncertain db = in_db(n);
     // Mean square to the level of a sine of that rms.
     level.noise = db.value + 20.0 * std::log10(std::numbers::sqrt2) + rig_.ret.offset_db;
-    level.noise_u_db =
-        std::hypot(expanded_95(db),
-                   coverage_factor_95(db.dof) * rig_.ret.standard_uncertainty.value());
+    level.noise_u_db = std::hypot(
+        expanded_95(db), coverage_factor_95(db.dof) * rig_.ret.standard_uncertainty.value());
   }
 }
 
@@ -309,9 +313,10 @@ void SteadyReading::read_dc(LevelPoint& level) {
   if (!rig_.sees_dc) return;
   const Line dc = spectra_.mean(0, first_, [](int) { return 0.0; });
   level.dc = dc.mean.real() * rig_.ret.peak_per_full_scale;
-  // The mean has one component, not two: its own scatter is sqrt 2 of what a line's component shows.
-  level.dc_u = coverage_factor_95(dc.dof) * std::numbers::sqrt2 * dc.u *
-               rig_.ret.peak_per_full_scale;
+  // The mean has one component, not two: its own scatter is sqrt 2 of what a line's component
+  // shows.
+  level.dc_u =
+      coverage_factor_95(dc.dof) * std::numbers::sqrt2 * dc.u * rig_.ret.peak_per_full_scale;
 }
 
 TakeVerdict SteadyReading::read(Curves& out) {

@@ -57,10 +57,12 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
       cycles2_(cycles_in(pair.f2, hold_.block, rate_)),
       spectra_(take.response, hold_, std::gcd(cycles1_, cycles2_)) {
   if (tail_.blocks > 0) alone_spectra_.emplace(take.response, tail_, std::gcd(cycles1_, cycles2_));
-  const std::array watched{cycles1_, cycles2_, bin({1, 1}), bin({-1, 1})};
-  const Settled settled =
-      judge_settling(spectra_, watched, spec.settings,
-                     Seconds(static_cast<double>(hold_.block) / rate_.value()));
+  std::vector<std::size_t> watched;
+  for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
+    if (in_reach(p)) watched.push_back(bin(p));
+  }
+  const Settled settled = judge_settling(spectra_, watched, spec.settings,
+                                         Seconds(static_cast<double>(hold_.block) / rate_.value()));
   first_ = settled.first;
   verdict_.settled = settled.settled;
   verdict_.clipped = reaches_full_scale(take.response, hold_);
@@ -70,7 +72,8 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
   tone1_ = product({1, 0});
   tone2_ = product({0, 1});
   const auto present = [](const Line& l) {
-    constexpr double kLeastOverNoise = 5.0;  // as for a steady sine: below, no reference for anything
+    constexpr double kLeastOverNoise =
+        5.0;  // as for a steady sine: below, no reference for anything
     return std::abs(l.mean) > kLeastOverNoise * l.u;
   };
   has_tones_ = present(tone1_) && present(tone2_);
@@ -95,20 +98,20 @@ Hertz TwoToneReading::frequency(ProductIndex p) const {
 }
 
 std::size_t TwoToneReading::bin(ProductIndex p) const {
-  return static_cast<std::size_t>(std::abs(p.k1 * static_cast<long>(cycles1_) +
-                                           p.k2 * static_cast<long>(cycles2_)));
+  return static_cast<std::size_t>(
+      std::abs(p.k1 * static_cast<long>(cycles1_) + p.k2 * static_cast<long>(cycles2_)));
 }
 
 bool TwoToneReading::in_reach(ProductIndex p) const {
-  // Two-tone methods put tones up to 20 kHz and products just above: what the converter's own filter
-  // passes (0.4535 of the rate in the usual half-band design) can be read.
+  // Two-tone methods put tones up to 20 kHz and products just above: what the converter's own
+  // filter passes (0.4535 of the rate in the usual half-band design) can be read.
   constexpr double kConverterShare = 0.4535;
   return frequency(p).value() <= kConverterShare * rig_.usable_rate(rate_).value();
 }
 
 double TwoToneReading::turn(ProductIndex p, int block) const {
-  const double turned = p.k1 * std::arg(spectra_.at(block, cycles1_)) +
-                        p.k2 * std::arg(spectra_.at(block, cycles2_));
+  const double turned =
+      p.k1 * std::arg(spectra_.at(block, cycles1_)) + p.k2 * std::arg(spectra_.at(block, cycles2_));
   // A product at a negative frequency shows as the conjugate at the positive one.
   return p.k1 * pair_.f1.value() + p.k2 * pair_.f2.value() < 0.0 ? -turned : turned;
 }
@@ -130,6 +133,8 @@ IntermodPoint TwoToneReading::blank(const std::string& name) const {
   p.drive = drive_;
   p.unit = rig_.ret.unit;
   p.product = name;
+  p.blocks = spectra_.blocks() - first_;
+  p.settled_after_s = first_ * static_cast<double>(hold_.block) / rate_.value();
   return p;
 }
 
@@ -144,14 +149,15 @@ TwoToneReading::Sum TwoToneReading::finish(const std::string& name, const Part& 
     return s;
   }
   s.reading = relate(part.amplitude, part.u, part.dof, carrier, rig_floor);
-  // What stands there with f2 alone is not the unit's intermodulation: products less than 10 dB above
-  // it are flagged. Where the segment shows noise alone, the noise flag has spoken already.
+  // What stands there with f2 alone is not the unit's intermodulation: products less than 10 dB
+  // above it are flagged. Where the segment shows noise alone, the noise flag has spoken already.
   constexpr double kTenDecibels = 3.1622776601683795;
   if (s.reading.flag == Flag::none && part.alone && *part.alone * kTenDecibels > part.amplitude) {
     s.reading.flag = Flag::floor;
   }
   const std::array flags{take_flag_, s.reading.flag};
   s.point.flag = gravest(flags);
+  if (!(s.reading.ratio > 0.0)) return s;  // exactly nothing, as only arithmetic gives it
   const double expanded = coverage_factor_95(s.reading.dof) * s.reading.u;
   s.point.percent = 100.0 * s.reading.ratio;
   s.point.db = 20.0 * std::log10(s.reading.ratio);
@@ -194,10 +200,15 @@ IntermodPoint TwoToneReading::total(const Sum& a, const Sum& b) const {
   double squares = 0.0;
   for (const auto& r : used) squares += r.ratio * r.ratio;
   const double root = std::sqrt(squares);
+  if (root == 0.0) {
+    p.flag = a.point.flag;
+    return p;
+  }
   std::vector<Contribution> terms;
   for (const auto& r : used) terms.push_back({r.ratio * r.u / root, r.dof});
   if (!seen.empty()) {
-    // A part that is only an upper limit widens the uncertainty: rectangular between absent and full.
+    // A part that is only an upper limit widens the uncertainty: rectangular between absent and
+    // full.
     for (const auto& r : limits) {
       terms.push_back({(std::hypot(root, r.ratio) - root) / (2.0 * std::sqrt(3.0)), kInfiniteDof});
     }

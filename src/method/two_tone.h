@@ -22,7 +22,8 @@ struct TonePair {
   std::string_view method;
   Hertz f1, f2;
   double share1 = 0.5, share2 = 0.5;  ///< of the peak, sum 1
-  /// A segment in which f2 sounds alone, at its own level, shows what stands on its sidebands already.
+  /// A segment in which f2 sounds alone, at its own level, shows what stands on its sidebands
+  /// already.
   bool f2_alone = false;
 };
 

@@ -25,7 +25,8 @@ namespace {
 // A file descriptor that closes itself.
 class File {
  public:
-  File(const std::filesystem::path& path, int flags) : path_(path), fd_(open(path.c_str(), flags, 0644)) {
+  File(const std::filesystem::path& path, int flags)
+      : path_(path), fd_(open(path.c_str(), flags, 0644)) {
     if (fd_ < 0) fail(path_, "cannot be opened");
   }
   ~File() { close(fd_); }
@@ -43,9 +44,13 @@ class File {
   void flush() {
     if (fsync(fd_) != 0) fail(path_, "cannot be flushed to the disk");
   }
+  // Some network and FUSE file systems flush files but know no flush of folders.
+  void flush_if_possible() {
+    if (fsync(fd_) != 0 && errno != EINVAL) fail(path_, "cannot be flushed to the disk");
+  }
 
  private:
-  const std::filesystem::path& path_;
+  std::filesystem::path path_;
   int fd_;
 };
 
@@ -54,7 +59,9 @@ std::filesystem::path folder_of(const std::filesystem::path& file) {
 }
 
 // A new name is safe only when the folder that holds it is on the disk too.
-void flush_folder(const std::filesystem::path& folder) { File(folder, O_RDONLY | O_DIRECTORY).flush(); }
+void flush_folder(const std::filesystem::path& folder) {
+  File(folder, O_RDONLY | O_DIRECTORY).flush_if_possible();
+}
 
 std::atomic<bool> interrupt_seen{false};
 static_assert(std::atomic<bool>::is_always_lock_free, "set from a signal handler");
@@ -74,8 +81,7 @@ void write_whole(const std::filesystem::path& file, std::string_view bytes) {
 void publish(const std::filesystem::path& part, const std::filesystem::path& file) {
   File(part, O_RDONLY).flush();
   if (std::rename(part.c_str(), file.c_str()) != 0) fail(file, "cannot be named");
-  const std::filesystem::path folder = folder_of(file);
-  flush_folder(folder);
+  flush_folder(folder_of(file));
 }
 
 void append_line(const std::filesystem::path& file, std::string_view line) {
@@ -104,8 +110,9 @@ QuietStderr::~QuietStderr() {
 }
 
 void catch_interrupts() {
-  struct sigaction action{};
+  struct sigaction action {};
   action.sa_handler = [](int) { interrupt_seen.store(true); };
+  action.sa_flags = SA_RESTART;  // a take being written is written on
   sigaction(SIGINT, &action, nullptr);
   sigaction(SIGTERM, &action, nullptr);
 }

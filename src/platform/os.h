@@ -8,8 +8,8 @@
 
 namespace kneeprint::os {
 
-/// Writes to FILE.part, flushes to the disk, renames to FILE, flushes the folder: FILE is whole or absent.
-/// Throws InputError naming the file and the system's reason.
+/// Writes to FILE.part, flushes to the disk, renames to FILE, flushes the folder: FILE is whole or
+/// absent. Throws InputError naming the file and the system's reason.
 void write_whole(const std::filesystem::path& file, std::string_view bytes);
 /// Flushes an already written FILE.part to the disk and names it FILE.
 void publish(const std::filesystem::path& part, const std::filesystem::path& file);

@@ -6,9 +6,9 @@
 #include <filesystem>
 
 #include "platform/json_fields.h"
+#include "platform/read_text.h"
 #include "print/plan.h"
 #include "quantity/failure.h"
-#include "platform/read_text.h"
 
 namespace kneeprint {
 namespace {

@@ -6,9 +6,9 @@
 #include <system_error>
 
 #include "platform/os.h"
+#include "platform/read_text.h"
 #include "print/checksum.h"
 #include "quantity/failure.h"
-#include "platform/read_text.h"
 #include "signal/wav.h"
 
 namespace kneeprint {

@@ -6,9 +6,9 @@
 #include <string>
 #include <vector>
 
+#include "platform/read_text.h"
 #include "print/journal.h"
 #include "print/plan.h"
-#include "platform/read_text.h"
 #include "signal/waveform.h"
 
 namespace kneeprint {

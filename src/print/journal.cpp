@@ -13,10 +13,10 @@
 #include <string_view>
 #include <system_error>
 
-#include "print/checksum.h"
 #include "platform/json_fields.h"
-#include "quantity/failure.h"
 #include "platform/read_text.h"
+#include "print/checksum.h"
+#include "quantity/failure.h"
 
 namespace kneeprint {
 namespace {

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// What can go wrong, as the exit code that scripts see and a sentence that a technician understands.
-// Thrown anywhere but in the audio callback; caught once, in the command line's main or in the desk.
+// What can go wrong, as the exit code that scripts see and a sentence that a technician
+// understands. Thrown anywhere but in the audio callback; caught once, in the command line's main
+// or in the desk.
 #pragma once
 
 #include <stdexcept>

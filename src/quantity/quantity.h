@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Physical quantities as types: a frequency is never a number, and never a time.
-// Construction is explicit, a quantity adds only to its own kind, and a ratio of two is a plain number.
-// Shape: one double. Errors: none (arithmetic follows IEEE 754).
+// Construction is explicit, a quantity adds only to its own kind, and a ratio of two is a plain
+// number. Shape: one double. Errors: none (arithmetic follows IEEE 754).
 #pragma once
 
 #include <compare>

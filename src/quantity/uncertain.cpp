@@ -22,7 +22,8 @@ Contribution combine(std::span<const Contribution> parts) {
     sum_squares += square;
     sum_fourths_over_dof += square * square / part.dof;
   }
-  // Squares of the tiniest amplitudes underflow in the fourth power: then dof is as good as infinite.
+  // Squares of the tiniest amplitudes underflow in the fourth power: then dof is as good as
+  // infinite.
   const double dof =
       sum_fourths_over_dof > 0.0 ? sum_squares * sum_squares / sum_fourths_over_dof : kInfiniteDof;
   return {std::sqrt(sum_squares), dof};

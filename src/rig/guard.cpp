@@ -9,27 +9,37 @@ namespace kneeprint {
 
 std::string_view name(GuardReason reason) {
   switch (reason) {
-    case GuardReason::none: return "";
-    case GuardReason::not_a_number: return "not-a-number";
-    case GuardReason::over_ceiling: return "over-ceiling";
-    case GuardReason::return_hot: return "return-hot";
-    case GuardReason::cancelled: return "cancelled";
+    case GuardReason::none:
+      return "";
+    case GuardReason::not_a_number:
+      return "not-a-number";
+    case GuardReason::over_ceiling:
+      return "over-ceiling";
+    case GuardReason::return_hot:
+      return "return-hot";
+    case GuardReason::cancelled:
+      return "cancelled";
   }
   return "";
 }
 
 std::string sentence(GuardReason reason) {
   switch (reason) {
-    case GuardReason::none: return "";
+    case GuardReason::none:
+      return "";
     case GuardReason::not_a_number:
-      return "the guard muted the send: the program asked for a sample that is no number. This is a "
+      return "the guard muted the send: the program asked for a sample that is no number. This is "
+             "a "
              "fault of the program; please report it with the plan.";
     case GuardReason::over_ceiling:
-      return "the guard muted the send: the program asked for more than the ceiling allows. This is a "
+      return "the guard muted the send: the program asked for more than the ceiling allows. This "
+             "is a "
              "fault of the program; please report it with the plan.";
     case GuardReason::return_hot:
-      return "the guard muted the send: the return reached full scale. Turn the input gain down or put a "
-             "pad before the return; if the level stays although the send is silent, a loop is closed "
+      return "the guard muted the send: the return reached full scale. Turn the input gain down or "
+             "put a "
+             "pad before the return; if the level stays although the send is silent, a loop is "
+             "closed "
              "outside this program: turn down or unplug it.";
     case GuardReason::cancelled:
       return "the send was muted by hand; what was taken is kept (--resume goes on)";

@@ -21,18 +21,18 @@ namespace kneeprint {
 
 enum class GuardReason : int {
   none = 0,
-  not_a_number,    ///< the program asked for NaN or infinity
-  over_ceiling,    ///< the program asked for more than the ceiling
-  return_hot,      ///< the return reached its limit
-  cancelled,       ///< a person stopped it
+  not_a_number,  ///< the program asked for NaN or infinity
+  over_ceiling,  ///< the program asked for more than the ceiling
+  return_hot,    ///< the return reached its limit
+  cancelled,     ///< a person stopped it
 };
-std::string_view name(GuardReason reason);      ///< stable id for the journal: "over-ceiling", ...
-std::string sentence(GuardReason reason);       ///< plain words: what happened and what to do
+std::string_view name(GuardReason reason);  ///< stable id for the journal: "over-ceiling", ...
+std::string sentence(GuardReason reason);   ///< plain words: what happened and what to do
 
 struct GuardLimits {
-  LevelDbfs ceiling{-20.0};          ///< peak sample = that of a sine at this level
-  LevelDbfs return_limit{-0.1};      ///< |return| at or over this peak mutes
-  Seconds mute_ramp{0.003};          ///< raised cosine
+  LevelDbfs ceiling{-20.0};      ///< peak sample = that of a sine at this level
+  LevelDbfs return_limit{-0.1};  ///< |return| at or over this peak mutes
+  Seconds mute_ramp{0.003};      ///< raised cosine
 };
 
 class Guard {
@@ -55,7 +55,7 @@ class Guard {
   double ceiling_peak_;
   float return_peak_;
   double ramp_step_;
-  double ramp_phase_ = 0.0;  ///< 0 open .. 1 muted, touched by the audio thread alone
+  double ramp_phase_ = 0.0;   ///< 0 open .. 1 muted, touched by the audio thread alone
   double last_sample_ = 0.0;  ///< what the ramp fades when `wanted` itself cannot be used
   std::atomic<int> reason_{0};
   std::atomic<bool> silent_{false};

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Plays one stimulus through the guard and records the returns: the body of the audio callback.
-// Everything is allocated in the constructor; process() allocates nothing, locks nothing, throws nothing.
+// Everything is allocated in the constructor; process() allocates nothing, locks nothing, throws
+// nothing.
 #pragma once
 
 #include <atomic>

@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// A way to the converters. Virtual, PortAudio: both pull their samples from a Player, so from the guard.
+// A way to the converters. Virtual, PortAudio: both pull their samples from a Player, so from the
+// guard.
 #pragma once
 
 #include <memory>
@@ -10,9 +11,9 @@
 namespace kneeprint {
 
 struct PortInfo {
-  std::string name;         ///< for the page: device and host API, or the virtual unit
+  std::string name;  ///< for the page: device and host API, or the virtual unit
   Hertz rate{48000.0};
-  bool live = false;        ///< sounds in the room
+  bool live = false;  ///< sounds in the room
   bool has_reference = false;
   std::size_t buffer_frames = 0;
   Seconds reported_latency{0.0};  ///< round trip that the driver claims

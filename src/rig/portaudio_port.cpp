@@ -82,14 +82,16 @@ DeviceInfo pick_device(const std::string& wanted) {
   if (exact.size() == 1) return exact.front();
   if (matching.size() == 1) return matching.front();
   if (matching.empty()) {
-    throw DeviceError(fmt::format("no audio device is named like \"{}\"; {}", wanted, names_of(devices)));
+    throw DeviceError(
+        fmt::format("no audio device is named like \"{}\"; {}", wanted, names_of(devices)));
   }
-  throw DeviceError(fmt::format("several audio devices are named like \"{}\": say which by index; {}",
-                                wanted, names_of(matching)));
+  throw DeviceError(
+      fmt::format("several audio devices are named like \"{}\": say which by index; {}", wanted,
+                  names_of(matching)));
 }
 
-// The stream is opened once and runs until the port goes, silent between takes: starting and stopping it
-// for every take would shift the latency (and, on JACK, drop the connections).
+// The stream is opened once and runs until the port goes, silent between takes: starting and
+// stopping it for every take would shift the latency (and, on JACK, drop the connections).
 class PortAudioPort : public Port {
  public:
   explicit PortAudioPort(const LiveSettings& settings);
@@ -111,7 +113,8 @@ class PortAudioPort : public Port {
   int outputs_ = 0, inputs_ = 0;
   PaStream* stream_ = nullptr;
   std::atomic<Player*> player_{nullptr};
-  // Raised around the callback's use of the player, so that play() never returns while it is in use.
+  // Raised around the callback's use of the player, so that play() never returns while it is in
+  // use.
   std::atomic<bool> serving_{false};
   std::atomic<unsigned long> callbacks_{0};
 };
@@ -186,8 +189,8 @@ void PortAudioPort::serve(const float* const* in, float* const* out, unsigned lo
           settings_.reference_channel > 0
               ? std::span<const float>(in[settings_.reference_channel - 1], frames)
               : std::span<const float>();
-      const bool more = player->process(
-          returned, reference, std::span<float>(out[settings_.send_channel - 1], frames));
+      const bool more = player->process(returned, reference,
+                                        std::span<float>(out[settings_.send_channel - 1], frames));
       if (!more) player_.store(nullptr);
     }
   }
@@ -210,10 +213,11 @@ void PortAudioPort::wait_while(Player& player) {
     }
     if (Pa_IsStreamActive(stream_) != 1 || Clock::now() - last_call > kSilentDevice) {
       player_.store(nullptr);
-      throw DeviceError(fmt::format(
-          "{}: the device stopped in mid-take. Check its cable and power and the audio server, then go "
-          "on with --resume.",
-          info_.name));
+      throw DeviceError(
+          fmt::format("{}: the device stopped in mid-take. Check its cable and power and the audio "
+                      "server, then go "
+                      "on with --resume.",
+                      info_.name));
     }
   }
 }

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Live converters by PortAudio: full duplex on one device, any host API. The only file pair that sees
-// PortAudio. What drivers print while they are probed is swallowed.
+// Live converters by PortAudio: full duplex on one device, any host API. The only file pair that
+// sees PortAudio. What drivers print while they are probed is swallowed.
 #pragma once
 
 #include <memory>
@@ -27,7 +27,8 @@ struct LiveSettings {
   Hertz rate{0.0};                           ///< 0: the device's default rate; 8 kHz .. 192 kHz
 };
 
-/// Throws DeviceError: no such device, several match, too few channels, rate refused; names what is there.
+/// Throws DeviceError: no such device, several match, too few channels, rate refused; names what is
+/// there.
 std::unique_ptr<Port> make_portaudio_port(const LiveSettings& settings);
 
 }  // namespace kneeprint

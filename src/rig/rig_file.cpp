@@ -52,7 +52,8 @@ Direction read_direction(const JsonFields& f) {
   if (f.has("full_scale_v_rms")) {
     const VoltsRms full_scale(f.number("full_scale_v_rms", {1e-4, 1e4}));
     // Without its uncertainty a full scale is no calibration.
-    d.scale = LevelScale::calibrated(full_scale, Decibels(f.number("full_scale_u_db", {0.0, 10.0})));
+    d.scale =
+        LevelScale::calibrated(full_scale, Decibels(f.number("full_scale_u_db", {0.0, 10.0})));
   } else if (f.has("full_scale_u_db")) {
     f.refuse("full_scale_u_db", "stands without full_scale_v_rms; give both or neither");
   }
@@ -97,9 +98,9 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
   const nlohmann::json value = parse_json(json, origin);
   const JsonFields f(value, origin);
   f.check_format(kFormat, kVersion);
-  f.allow_only({"format", "version", "name", "kind", "device", "rate_hz", "recorded_rate_hz", "send",
-                "return", "reference", "wiring", "source_impedance_ohm", "load_impedance_ohm",
-                "ceiling_dbfs", "calibrated_on", "invented", "floor"});
+  f.allow_only({"format", "version", "name", "kind", "device", "rate_hz", "recorded_rate_hz",
+                "send", "return", "reference", "wiring", "source_impedance_ohm",
+                "load_impedance_ohm", "ceiling_dbfs", "calibrated_on", "invented", "floor"});
   Rig rig;
   rig.name = f.text("name");
   const std::string kind = f.choice("kind", "kind", {"virtual", "live", "reel"});
@@ -150,6 +151,8 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
   return rig;
 }
 
-Rig read_rig(const std::filesystem::path& file) { return parse_rig(read_text(file), file.string()); }
+Rig read_rig(const std::filesystem::path& file) {
+  return parse_rig(read_text(file), file.string());
+}
 
 }  // namespace kneeprint

@@ -14,20 +14,20 @@ namespace kneeprint {
 enum class RigKind { virtual_rig, live, reel };
 
 struct Rig {
-  std::string name;          ///< for the page
+  std::string name;  ///< for the page
   RigKind kind = RigKind::live;
-  std::string device;        ///< live: text that picks the device; virtual: "virtual:..."
-  int send_channel = 1;      ///< from 1
+  std::string device;    ///< live: text that picks the device; virtual: "virtual:..."
+  int send_channel = 1;  ///< from 1
   int return_channel = 1;
   std::optional<int> reference_channel;
   std::string reference_tap;  ///< "terminals" (a split at the unit's input) or "second-output"
   Hertz rate{48000.0};
   std::optional<Hertz> recorded_rate;  ///< a reel's recording, when it was made at another rate
-  LevelScale send_scale;      ///< uncalibrated when the file states no full-scale voltage
+  LevelScale send_scale;               ///< uncalibrated when the file states no full-scale voltage
   LevelScale return_scale;
   bool dc_coupled_send = false;
   bool dc_coupled_return = false;  ///< false: dc stays empty
-  std::string wiring;         ///< "balanced", "pin 3 grounded", "pin 3 open"
+  std::string wiring;              ///< "balanced", "pin 3 grounded", "pin 3 open"
   std::optional<Ohms> source_impedance;
   std::optional<Ohms> load_impedance;
   std::optional<double> ceiling_dbfs;  ///< the guard's, when the rig file names one

@@ -17,7 +17,7 @@
 namespace kneeprint {
 
 /// A whole number of samples and a fraction; the fraction by Lagrange interpolation over eight
-/// samples, within -180 dB where signals stay under 1/32 of the rate.
+/// samples, within -170 dB where signals stay under 1/32 of the rate.
 class OversampledDelay {
  public:
   /// samples >= 0; a fraction needs samples >= 3.

@@ -1,13 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The default rig: a virtual unit behind virtual converters. No audio hardware needed.
 //
-// send sample -> 24-bit quantiser with TPDF dither -> interpolation to the oversampled rate
-// (half-band Kaiser filters, pass-band to 0.4535 of the rate, images under -140 dB) -> volts by the
-// hidden true full scale -> noise -> small residual distortion -> unit -> residual distortion ->
-// decimation -> latency (integer and fraction) -> noise -> volts to full scale by the hidden true
-// value -> clip at full scale -> 24-bit quantiser with dither -> return sample.
-// Streams buffer by buffer, as a driver would. Seeded: the same seed and take number give the same
-// bits, whatever was played before. Every take starts from the unit's settled rest.
+// send sample -> 24-bit quantiser with TPDF dither -> noise -> volts by the hidden true full scale
+// -> interpolation to the oversampled rate (signal/oversample.h) -> small residual distortion ->
+// unit -> residual distortion -> latency -> decimation -> volts to full scale by the hidden true
+// value -> noise -> clip at full scale -> 24-bit quantiser with dither -> return sample. Streams
+// buffer by buffer, as a driver would. Seeded: the same seed and take number give the same bits,
+// whatever was played before. Every take starts from the unit's settled rest.
 #pragma once
 
 #include <cstdint>
@@ -27,8 +26,7 @@ struct ConverterModel {
   LevelDbfs noise{-116.0};      ///< rms of each converter, white to half the rate
   Decibels second_harmonic{-128.0};  ///< residual of each converter at full scale
   Decibels third_harmonic{-132.0};
-  /// Round trip, the same at every frequency; any real number from about 400 (buffer and filters)
-  /// up.
+  /// Round trip, the same at every frequency; any real number above 380 (buffer and filters).
   double latency_samples = 1473.3125;
   bool dither_and_quantise = true;
   bool reference = false;  ///< second return: a split at the unit's input terminals

@@ -37,8 +37,7 @@ RigFloor measure_floor(Port& cable, LevelDbfs ceiling, int orders) {
   spec.method = steady.id;
   spec.asked = kFloorTone;
   spec.settings.orders = orders;
-  spec.hold_blocks =
-      static_cast<int>(std::lround(kIntegration / steady.block_length(spec, rate)));
+  spec.hold_blocks = static_cast<int>(std::lround(kIntegration / steady.block_length(spec, rate)));
   const CoherentTone tone = coherent_tone(spec.asked, rate, spec.settings.block, orders);
 
   std::vector<FloorPoint> points;
@@ -54,14 +53,14 @@ RigFloor measure_floor(Port& cable, LevelDbfs ceiling, int orders) {
     heard.samples.erase(heard.samples.begin(), heard.samples.begin() + static_cast<long>(delay));
     const BlockSpectra spectra(heard, stimulus.hold, tone.cycles);
     const auto line = [&](int n) {
-      return spectra.mean(tone.cycles * static_cast<std::size_t>(n), 0, [&](int b) {
-        return n * std::arg(spectra.at(b, tone.cycles));
-      });
+      return spectra.mean(tone.cycles * static_cast<std::size_t>(n), 0,
+                          [&](int b) { return n * std::arg(spectra.at(b, tone.cycles)); });
     };
     const double fundamental = std::abs(line(1).mean);
     for (int n = 2; n <= orders && n * tone.frequency.value() < 0.45 * rate.value(); ++n) {
       const Line l = line(n);
-      // The noise adds 2 u^2 to the mean square of a line's amplitude; taken off, at least u remains.
+      // The noise adds 2 u^2 to the mean square of a line's amplitude; taken off, at least u
+      // remains.
       const double residual = std::sqrt(std::max(std::norm(l.mean) - 2.0 * l.u * l.u, l.u * l.u));
       if (residual > 0.0) {
         points.push_back({spec.send, n, Decibels::of_ratio(residual / fundamental)});

@@ -15,8 +15,8 @@ namespace {
 
 constexpr double kLowest = 100.0, kHighest = 10000.0;
 constexpr Seconds kLength{0.4}, kRamp{0.02};
-// A chirp through any unit that still resembles it correlates above this; noise and hum stay far below
-// (0.4 s of white noise: 0.03 at most in practice).
+// A chirp through any unit that still resembles it correlates above this; noise and hum stay far
+// below (0.4 s of white noise: 0.03 at most in practice).
 constexpr double kLeastMatch = 0.2;
 
 double rms(const std::vector<double>& x) {
@@ -61,14 +61,17 @@ ChainCheck judge_chain(const Waveform& stimulus, const std::vector<Waveform>& re
   const Waveform& returned = recorded.front();
   if (peak(returned.samples) >= 0.9999) {
     throw GuardStop(
-        "chain check: the return clips although the send plays very quietly. Turn the input gain down, "
+        "chain check: the return clips although the send plays very quietly. Turn the input gain "
+        "down, "
         "look for a loop between send and return (direct monitoring, a patched insert), then start "
         "again.");
   }
   if (rms(returned.samples) < 1e-7) {  // -137 dBFS: not even a converter's own noise
     throw NothingUsable(
-        "chain check: nothing comes back, not even noise. Check that the unit is on, that its output is "
-        "patched to the return that was named (--return), and that this input is switched on in the "
+        "chain check: nothing comes back, not even noise. Check that the unit is on, that its "
+        "output is "
+        "patched to the return that was named (--return), and that this input is switched on in "
+        "the "
         "interface's mixer.");
   }
   const auto latest = static_cast<long>(returned.samples.size() - stimulus.samples.size());
@@ -76,7 +79,8 @@ ChainCheck judge_chain(const Waveform& stimulus, const std::vector<Waveform>& re
   if (std::abs(heard.match) < kLeastMatch) {
     throw NothingUsable(fmt::format(
         "chain check: the return shows {:.1f} dBFS of something, but not what was sent (likeness "
-        "{:.2f}, at least {:.2f} expected). Check the send (--send) and return (--return) channels, "
+        "{:.2f}, at least {:.2f} expected). Check the send (--send) and return (--return) "
+        "channels, "
         "bypass and mute switches of the unit, and that no other program plays.",
         20.0 * std::log10(rms(returned.samples) * std::numbers::sqrt2), std::abs(heard.match),
         kLeastMatch));
@@ -90,8 +94,10 @@ ChainCheck judge_chain(const Waveform& stimulus, const std::vector<Waveform>& re
     const Delay tapped = find_delay(stimulus.samples, recorded[1].samples, 0, latest);
     if (std::abs(tapped.match) < kLeastMatch) {
       throw NothingUsable(
-          "chain check: the reference return does not carry the send. Check the cable that is to go "
-          "straight from the send to the reference input (--reference), or leave the reference out.");
+          "chain check: the reference return does not carry the send. Check the cable that is to "
+          "go "
+          "straight from the send to the reference input (--reference), or leave the reference "
+          "out.");
     }
     check.delay = tapped.samples;
   }

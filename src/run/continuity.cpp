@@ -12,9 +12,11 @@ namespace kneeprint {
 namespace {
 
 constexpr Seconds kChunk{0.005};
-constexpr int kSustained = 5;      // chunks on either side of an edge: a click is shorter than that
-constexpr double kEdge = 8.0;      // a settling unit changes smoothly, noise by a few per cent
-constexpr double kSmallest = 3e-7;  // of full scale: rounding of the stored samples
+constexpr int kSustained = 5;  // chunks on either side of an edge: a click is shorter than that
+constexpr double kEdge = 8.0;  // a settling unit changes smoothly, noise by a few per cent
+// Of full scale. A settling unit's difference runs into the converters' last bits and stops there
+// abruptly; one lost frame of 41 Hz at -60 dBFS still shows 3.8e-6.
+constexpr double kSmallest = 2e-6;
 
 // rms of x[n + block] - x[n] in chunks over the hold.
 std::vector<double> block_differences(const Waveform& take, const HoldLayout& hold) {
@@ -33,7 +35,8 @@ std::vector<double> block_differences(const Waveform& take, const HoldLayout& ho
 
 // Is there an abrupt, lasting change from small to large between a[..] (before) and b[..] (after)?
 bool is_edge(double largest_small, double smallest_large) {
-  return smallest_large > kSmallest && smallest_large > kEdge * std::max(largest_small, kSmallest / kEdge);
+  return smallest_large > kSmallest &&
+         smallest_large > kEdge * std::max(largest_small, kSmallest / kEdge);
 }
 
 }  // namespace
@@ -71,8 +74,7 @@ Continuity check_continuity(const Waveform& take, const HoldLayout& hold) {
   const double mean = (*least + *most) / 2.0;
   // Two clocks turn the phase by the same angle in every block; settling does not.
   if (*most - *least < 0.3 * std::abs(mean)) {
-    result.clock_ppm =
-        1e6 * mean / (2.0 * std::numbers::pi * static_cast<double>(strongest));
+    result.clock_ppm = 1e6 * mean / (2.0 * std::numbers::pi * static_cast<double>(strongest));
   }
   return result;
 }

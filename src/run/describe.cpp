@@ -15,11 +15,10 @@ namespace kneeprint {
 namespace {
 
 constexpr double kAxisDegrees = 20.0;
-constexpr double kClearOfNoise = 10.0;  // amplitude over component_u: 20 dB, magnitude bias under 0.5 %
+constexpr double kClearOfNoise =
+    10.0;  // amplitude over component_u: 20 dB, magnitude bias under 0.5 %
 
-bool fits(Flag flag) {
-  return flag == Flag::none || flag == Flag::noise || flag == Flag::floor;
-}
+bool fits(Flag flag) { return flag == Flag::none || flag == Flag::noise || flag == Flag::floor; }
 
 // The input's peak in volts (full scales) at a drive. On an undeclared reel drives are dBFS too.
 double input_peak(const RigView& view, double drive) { return view.send.peak_of_level(drive); }

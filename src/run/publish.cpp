@@ -52,13 +52,15 @@ Model fit_folder(const std::filesystem::path& path) {
 
 void report_folder(const std::filesystem::path& path, const std::string& why_no_model) {
   const Opened o = open(path);
-  ReportData data{o.plan, o.rig, o.journal, read_curves(o.folder.curves()), std::nullopt,
-                  why_no_model.empty() ? "no fit was made (run `kneeprint fit`)" : why_no_model};
+  ReportData data{
+      o.plan,       o.rig,
+      o.journal,    read_curves(o.folder.curves()),
+      std::nullopt, why_no_model.empty() ? "no fit was made (run `kneeprint fit`)" : why_no_model};
   if (why_no_model.empty() && std::filesystem::exists(o.folder.model_file())) {
     data.model = read_model(o.folder.model_file());
   }
   o.folder.write_result(o.folder.report_html(), html_report(data));
-  write_pdf_report(data, o.folder.report_pdf());
+  o.folder.write_result(o.folder.report_pdf(), pdf_report(data));
 }
 
 Published publish_folder(const std::filesystem::path& path, Progress& progress) {

@@ -11,8 +11,8 @@
 namespace kneeprint {
 
 struct Published {
-  int takes = 0;                ///< kept, without the chain check
-  std::optional<Model> model;   ///< empty when nothing could be fitted
+  int takes = 0;               ///< kept, without the chain check
+  std::optional<Model> model;  ///< empty when nothing could be fitted
   std::string why_no_model;
 };
 

@@ -36,10 +36,11 @@ LevelDbfs send_level(const PlanLevel& level, const Rig& rig, const std::string& 
   double dbfs = level.value;
   if (level.unit != PlanUnit::dbfs) {
     if (!view.send.is_calibrated()) {
-      throw InputError(fmt::format(
-          "plan: field \"{}\" is in volts, dBu or dBV, but this rig is uncalibrated: give a rig file "
-          "with full-scale voltages (--rig FILE), or state the level in dBFS",
-          field));
+      throw InputError(
+          fmt::format("plan: field \"{}\" is in volts, dBu or dBV, but this rig is uncalibrated: "
+                      "give a rig file "
+                      "with full-scale voltages (--rig FILE), or state the level in dBFS",
+                      field));
     }
     double dbu = level.value;
     if (level.unit == PlanUnit::dbv) dbu = to_dbu(to_volts(LevelDbv(level.value))).value();
@@ -61,7 +62,8 @@ LevelDbfs ceiling_of(const Plan& plan, const Rig& rig, std::optional<LevelDbfs> 
   if (asked) lower(*asked);
   if (plan.ceiling) lower(send_level(*plan.ceiling, rig, "ceiling"));
   if (rig.ceiling_dbfs) lower(LevelDbfs(*rig.ceiling_dbfs));
-  // Only a ceiling named on the command line lifts this one: a plan written for another rig must not.
+  // Only a ceiling named on the command line lifts this one: a plan written for another rig must
+  // not.
   if (rig.kind == RigKind::live && !has_rig_file && !asked) {
     ceiling = named ? std::min(ceiling, kUnknownLive) : kUnknownLive;
   }
@@ -86,10 +88,11 @@ Ladder ladder_of(const Plan& plan, const Rig& rig, LevelDbfs ceiling) {
     }
   }
   if (ladder.rungs.empty()) {
-    throw InputError(fmt::format(
-        "plan: the ladder's lowest rung, {:.2f} dBFS at the send, is above the ceiling of {:.2f} dBFS; "
-        "lower ladder.from, or raise the ceiling by name (--ceiling)",
-        from, ceiling.value()));
+    throw InputError(
+        fmt::format("plan: the ladder's lowest rung, {:.2f} dBFS at the send, is above the ceiling "
+                    "of {:.2f} dBFS; "
+                    "lower ladder.from, or raise the ceiling by name (--ceiling)",
+                    from, ceiling.value()));
   }
   return ladder;
 }

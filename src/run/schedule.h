@@ -14,12 +14,12 @@ namespace kneeprint {
 /// What reading needs of the rig. Levels are dBu only when send and return are both calibrated.
 RigView view_of(const Rig& rig);
 
-/// A plan's level at this rig's send. Throws InputError when it is in dBu, dBV or volts and the rig is
-/// uncalibrated, or above 0 dBFS.
+/// A plan's level at this rig's send. Throws InputError when it is in dBu, dBV or volts and the rig
+/// is uncalibrated, or above 0 dBFS.
 LevelDbfs send_level(const PlanLevel& level, const Rig& rig, const std::string& field);
 
-/// The guard's ceiling: the lowest of the plan's, the rig file's and `asked`; -20 dBFS on a live device
-/// without a rig file when nobody names another; 0 dBFS otherwise.
+/// The guard's ceiling: the lowest of the plan's, the rig file's and `asked`; -20 dBFS on a live
+/// device without a rig file when nobody names another; 0 dBFS otherwise.
 LevelDbfs ceiling_of(const Plan& plan, const Rig& rig, std::optional<LevelDbfs> asked,
                      bool has_rig_file);
 
@@ -37,7 +37,8 @@ std::vector<TakeSpec> takes_of_rung(const Plan& plan, const Rig& rig, LevelDbfs 
 int take_number(const Plan& plan, int rung, int index);
 int takes_per_rung(const Plan& plan);
 
-/// The steady frequency that the fit uses: the plan's own, else the one nearest to 997 Hz (0: none).
+/// The steady frequency that the fit uses: the plan's own, else the one nearest to 997 Hz (0:
+/// none).
 double fit_frequency(const Plan& plan);
 
 /// Throws InputError when a method's tones do not fit below half the rate.

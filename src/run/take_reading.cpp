@@ -17,10 +17,11 @@ TakeSpec spec_of(const JournalTake& take, const Plan& plan, const Rig& rig) {
     spec.hold_blocks = static_cast<int>(std::lround(take.hold_s / block.value()));
     return spec;
   }
-  throw InputError(fmt::format(
-      "journal.jsonl: take {} ({}, {} Hz) is not one of the plan's: plan.json was changed after the "
-      "measurement; put the original back",
-      take.number, take.method, take.frequency_hz));
+  throw InputError(
+      fmt::format("journal.jsonl: take {} ({}, {} Hz) is not one of the plan's: plan.json was "
+                  "changed after the "
+                  "measurement; put the original back",
+                  take.number, take.method, take.frequency_hz));
 }
 
 TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
@@ -48,8 +49,8 @@ Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan&
     if (take.rung >= 0) read_take(folder, take, plan, rig, curves);
   }
   if (curves.levels.empty() && curves.intermods.empty()) {
-    throw NothingUsable(fmt::format("{}: no take of the ladder was kept, so there is nothing to read",
-                                    folder.path().string()));
+    throw NothingUsable(fmt::format(
+        "{}: no take of the ladder was kept, so there is nothing to read", folder.path().string()));
   }
   make_upright(curves, polarity_of(curves, plan));
   if (!view_of(rig).gain_known) make_relative(curves, fit_frequency(plan));

@@ -16,8 +16,8 @@ TakeSpec spec_of(const JournalTake& take, const Plan& plan, const Rig& rig);
 TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
                       const Rig& rig, Curves& out);
 
-/// Every take of the folder, in the order of their numbers; upright; relative on an undeclared reel.
-/// Throws NothingUsable when there is no take but the chain check.
+/// Every take of the folder, in the order of their numbers; upright; relative on an undeclared
+/// reel. Throws NothingUsable when there is no take but the chain check.
 Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan& plan,
                   const Rig& rig);
 

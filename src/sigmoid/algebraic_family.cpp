@@ -40,8 +40,15 @@ double by_sharpness(double z, double p) {
 }  // namespace
 
 SigmoidFamily algebraic_family() {
-  return {"algebraic", "algebraic", "z / (1 + |z|^p)^(1/p)", true, 1.0,
-          40.0,        value,       slope,                   by_sharpness,
+  return {"algebraic",
+          "algebraic",
+          "z / (1 + |z|^p)^(1/p)",
+          true,
+          1.0,
+          40.0,
+          value,
+          slope,
+          by_sharpness,
           "elementary; slope and dS/dp derived, checked against finite differences"};
 }
 

@@ -21,8 +21,15 @@ double by_sharpness(double, double) { return 0.0; }
 }  // namespace
 
 SigmoidFamily atan_family() {
-  return {"atan", "arctangent", "(2/pi) atan(pi z / 2)", false, 1.0,
-          1.0,    value,        slope,                   by_sharpness,
+  return {"atan",
+          "arctangent",
+          "(2/pi) atan(pi z / 2)",
+          false,
+          1.0,
+          1.0,
+          value,
+          slope,
+          by_sharpness,
           "NIST DLMF 4.23.3; slope DLMF 4.24.9 (numbers from memory)"};
 }
 

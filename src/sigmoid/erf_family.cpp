@@ -18,9 +18,8 @@ double by_sharpness(double, double) { return 0.0; }
 }  // namespace
 
 SigmoidFamily erf_family() {
-  return {"erf", "error function", "erf(sqrt(pi) z / 2)", false, 1.0,
-          1.0,   value,            slope,                 by_sharpness,
-          "NIST DLMF 7.2.1"};
+  return {"erf", "error function", "erf(sqrt(pi) z / 2)", false, 1.0, 1.0, value,
+          slope, by_sharpness,     "NIST DLMF 7.2.1"};
 }
 
 }  // namespace kneeprint

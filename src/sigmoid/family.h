@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Sigmoid families: y = limit * (S(drive * x + bias) - S(bias)), S odd and monotonic, S'(0) = 1,
-// S(+-inf) = +-1. x, y in volts (full scales when uncalibrated); drive in 1/x; bias plain; limit as y.
-// One pair of files and one registry line per family.
+// S(+-inf) = +-1. x, y in volts (full scales when uncalibrated); drive in 1/x; bias plain; limit as
+// y. One pair of files and one registry line per family.
 #pragma once
 
 #include <span>
@@ -10,10 +10,10 @@
 namespace kneeprint {
 
 struct SigmoidFamily {
-  std::string_view id;       ///< stored in files
-  std::string_view title;    ///< for pages
-  std::string_view formula;  ///< for pages, plain text
-  bool has_sharpness;        ///< p counts
+  std::string_view id;                   ///< stored in files
+  std::string_view title;                ///< for pages
+  std::string_view formula;              ///< for pages, plain text
+  bool has_sharpness;                    ///< p counts
   double sharpness_low, sharpness_high;  ///< range of p; 1 and 1 without
   /// S(z), S'(z) and dS/dp at sharpness p (p ignored and dS/dp 0 without sharpness). Any finite z.
   double (*value)(double z, double p);

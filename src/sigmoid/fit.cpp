@@ -5,7 +5,6 @@
 
 #include <algorithm>
 #include <cmath>
-#include <limits>
 
 #include "quantity/failure.h"
 #include "sigmoid/fit_family.h"
@@ -46,10 +45,10 @@ FitResult fit_sigmoids(const std::vector<FitDatum>& data, const FitOptions& opti
   check(data);
   const HarmonicData harmonics(data);
   if (data.size() < kLeastData || harmonics.rungs().size() < kLeastDrives) {
-    throw NothingUsable(
-        fmt::format("too little to fit a curve: {} usable harmonics at {} drives; at least {} at {} "
-                    "are needed",
-                    data.size(), harmonics.rungs().size(), kLeastData, kLeastDrives));
+    throw NothingUsable(fmt::format(
+        "too little to fit a curve: {} usable harmonics at {} drives; at least {} at {} "
+        "are needed",
+        data.size(), harmonics.rungs().size(), kLeastData, kLeastDrives));
   }
 
   FitResult result;
@@ -61,13 +60,14 @@ FitResult fit_sigmoids(const std::vector<FitDatum>& data, const FitOptions& opti
     if (families[i].aicc < families[result.best].aicc) result.best = i;
   }
   const double lowest = families[result.best].aicc;
-  result.limit_low = std::numeric_limits<double>::infinity();
+  result.limit_low = families[result.best].limit.low95;
+  result.limit_high = families[result.best].limit.high95;
   for (std::size_t i = 0; i < families.size(); ++i) {
     const double above = families[i].aicc - lowest;
     if (above <= kEquallyGood) result.equally_good.push_back(i);
     if (above <= kRejected) {
-      result.limit_low = std::min(result.limit_low, families[i].limit.low95);
-      result.limit_high = std::max(result.limit_high, families[i].limit.high95);
+      result.limit_low = std::min(result.limit_low, families[i].limit.value);
+      result.limit_high = std::max(result.limit_high, families[i].limit.value);
     }
   }
   return result;

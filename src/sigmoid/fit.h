@@ -1,12 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The sigmoid found from the harmonics of all levels at one frequency, and how sure it is.
 //
-// Each family is fitted by weighted least squares (harmonic_problem.h). What a family cannot reach is
-// its discrepancy d, a standard deviation relative to the fundamental H1 of each drive, found together
-// with the curve by maximum likelihood: the least of
+// Each family is fitted by weighted least squares (harmonic_problem.h). What a family cannot reach
+// is its discrepancy d, a standard deviation relative to the fundamental H1 of each drive, found
+// together with the curve by maximum likelihood: the least of
 //   -2 ln L = sum of (H_n - value)^2 / (u^2 + (d H1)^2) + ln(u^2 + (d H1)^2).
-// It stays 0 unless it lowers AICc, in which it counts as a parameter. Standard errors come from the
-// inverse Fisher matrix at the final weights; 95 % intervals are normal, for limit, drive and
+// It stays 0 unless it lowers AICc, in which it counts as a parameter. Standard errors come from
+// the inverse Fisher matrix at the final weights; 95 % intervals are normal, for limit, drive and
 // sharpness in the logarithm. They hold if the family holds.
 #pragma once
 
@@ -20,21 +20,23 @@ namespace kneeprint {
 
 /// One harmonic at one drive, from the upright output.
 struct FitDatum {
-  double input_peak = 0.0;   ///< x amplitude: volts peak (or full scales)
-  int order = 1;             ///< 0 for the offset, where the return passes DC
-  double value = 0.0;        ///< signed peak when `has_sign`, else magnitude
-  double u = 0.0;            ///< standard uncertainty, > 0
-  bool has_sign = true;      ///< phase within 20 degrees of the axis, or the datum is an in-phase part under noise
+  double input_peak = 0.0;  ///< x amplitude: volts peak (or full scales)
+  int order = 1;            ///< 0 for the offset, where the return passes DC
+  double value = 0.0;       ///< signed peak when `has_sign`, else magnitude
+  double u = 0.0;           ///< standard uncertainty, > 0
+  bool has_sign =
+      true;  ///< phase within 20 degrees of the axis, or the datum is an in-phase part under noise
 };
 
 struct FitOptions {
-  double send_relative_u = 0.0;    ///< standard uncertainty of x's scale, relative (type B, all drives alike)
+  double send_relative_u =
+      0.0;  ///< standard uncertainty of x's scale, relative (type B, all drives alike)
   double return_relative_u = 0.0;  ///< of y's scale
 };
 
 struct FittedParameter {
   double value = 0.0;
-  double standard_error = 0.0;     ///< fit and scale terms combined
+  double standard_error = 0.0;  ///< fit and scale terms combined
   double low95 = 0.0, high95 = 0.0;
 };
 
@@ -42,28 +44,30 @@ struct FittedFamily {
   const SigmoidFamily* family = nullptr;
   FittedParameter limit, drive, bias;
   std::optional<FittedParameter> sharpness;
-  double chi_square = 0.0;   ///< with measurement uncertainty alone
+  double chi_square = 0.0;  ///< with measurement uncertainty alone
   int data = 0, parameters = 0;
   double discrepancy = 0.0;  ///< standard deviation of what the family cannot reach, relative to H1
   double aicc = 0.0;         ///< -2 ln L (with the discrepancy in L) + 2k + 2k(k+1)/(n-k-1)
-  double reach = 0.0;  ///< half the fitted curve's swing at the strongest input over the limit, 0 .. 1
-  bool extrapolated = false; ///< reach < 0.8: the limit was never approached
-  bool converged = false;  ///< and neither drive nor bias at the end of the range searched
+  double reach =
+      0.0;  ///< half the fitted curve's swing at the strongest input over the limit, 0 .. 1
+  bool extrapolated = false;  ///< reach < 0.8: the limit was never approached
+  bool converged = false;     ///< and not at the end of the range searched for drive or bias
 
   SigmoidParameters point() const;
 };
 
 struct FitResult {
-  std::vector<FittedFamily> families;  ///< in registry order
-  std::size_t best = 0;                ///< lowest AICc
+  std::vector<FittedFamily> families;     ///< in registry order
+  std::size_t best = 0;                   ///< lowest AICc
   std::vector<std::size_t> equally_good;  ///< within 2 of the best, the best included
-  /// The limits' 95 % intervals joined over the families not rejected (AICc within 10 of the best).
+  /// Where the limit may be: the best family's 95 % interval, widened to hold the limit of every
+  /// family not rejected (AICc within 10 of the best).
   double limit_low = 0.0, limit_high = 0.0;
 };
 
 /// Every family fitted by Ceres from several starts. Throws NothingUsable with fewer than 8 data or
-/// fewer than 3 drives, or nothing but zeros; InputError naming a datum that is out of range (input,
-/// u > 0 and finite, order 0 to 1000).
+/// fewer than 3 drives, or when no curve fits (nothing but zeros, an inverted output); InputError
+/// naming a datum that is out of range (input, u > 0 and finite, order 0 to 1000).
 FitResult fit_sigmoids(const std::vector<FitDatum>& data, const FitOptions& options);
 
 }  // namespace kneeprint

@@ -7,15 +7,16 @@
 #include <limits>
 #include <utility>
 
+#include "quantity/failure.h"
+
 namespace kneeprint {
 namespace {
 
-constexpr double kAccuracy = 1e-12;      // of the quadrature: far below any converter's noise
-constexpr double kLooseAccuracy = 1e-6;  // to tell starts apart
-constexpr LeastSquaresOptions kLoose{40, 1e-6};
-constexpr LeastSquaresOptions kTight{200, 1e-13};
+// Of the sum of squares, which is about the number of data at the right weights: 1e-8 is a
+// thousandth of a standard error.
+constexpr LeastSquaresOptions kLoose{30, 1e-5}, kFair{60, 1e-8}, kFine{200, 1e-12};
 constexpr double kNormal95 = 1.959963984540054;  // 0.975 quantile of the normal distribution
-constexpr double kMostLogSpread = 14.0;          // of ln: a factor of a million tells nothing anyway
+constexpr double kMostLogSpread = 14.0;  // of ln: a factor of a million tells nothing anyway
 
 /// The fit at one discrepancy. -2 ln L up to the constant n ln(2 pi).
 struct Trial {
@@ -41,24 +42,16 @@ class Search {
 
   HarmonicProblem& problem() { return problem_; }
 
-  /// The best fit without discrepancy, and the best with one.
+  /// The best fit without discrepancy, and the best with one. Throws NothingUsable when no rising
+  /// curve fits at all.
   std::pair<Trial, Trial> run() {
     // Where the largest harmonic counts and the small ones do not yet: few local minima.
     const double first = std::clamp(0.1 * data_.largest_harmonic(), 1e-6, 1e-2);
-    std::vector<LeastSquaresSolution> found;
-    const LeastSquaresProblem loose = problem_.at(first, kLooseAccuracy);
-    for (Fitted& start : problem_.starts(first)) {
-      found.push_back(least_squares(loose, std::move(start), kLoose));
-    }
-    std::stable_sort(found.begin(), found.end(),
-                     [](const LeastSquaresSolution& a, const LeastSquaresSolution& b) {
-                       return a.sum_of_squares < b.sum_of_squares;
-                     });
-    if (found.empty()) return {};
+    const Shape start = best_start(first);
 
     // Down from there in steps, each fit beginning at the one before; then up.
-    const double least = 0.1 * data_.smallest_u();
-    std::vector<Trial> trials{trial(first, found.front().x)};
+    const double least = 0.1 * data_.smallest_sigma(0.0);
+    std::vector<Trial> trials{trial(first, start)};
     for (double d = first / kStep; d > least; d /= kStep) {
       trials.push_back(trial(d, trials.back().solution.x));
     }
@@ -67,31 +60,50 @@ class Search {
     for (double d = first * kStep; d < 1.0; d *= kStep) {
       trials.push_back(trial(d, trials.back().solution.x));
     }
-    Trial with = refined(*std::min_element(trials.begin(), trials.end(), better));
+    Trial with = *std::min_element(trials.begin(), trials.end(), better);
 
-    // The other starts once more, now with the final weights.
-    for (std::size_t i = 1; i < found.size(); ++i) {
-      without = std::min(without, quick(without.discrepancy, found[i].x), better);
-      with = std::min(with, quick(with.discrepancy, found[i].x), better);
-    }
+    // From the grid once more, with the weights that came out.
+    without = restarted(std::move(without));
+    with = refined(restarted(std::move(with)));
     return {polished(without), polished(with)};
   }
 
  private:
   static constexpr double kStep = 10.0;
 
-  Trial trial(double discrepancy, const Fitted& start, double accuracy = kAccuracy,
-              const LeastSquaresOptions& options = kTight) {
-    Trial t{discrepancy, least_squares(problem_.at(discrepancy, accuracy), start, options), 0.0};
+  Trial trial(double discrepancy, const Shape& start, const LeastSquaresOptions& options = kFair) {
+    Trial t{discrepancy, least_squares(problem_.over_shapes(discrepancy), start, options), 0.0};
     t.minus_2_log_likelihood = t.solution.sum_of_squares + data_.log_variances(discrepancy);
     return t;
   }
 
-  Trial quick(double discrepancy, const Fitted& start) {
-    return trial(discrepancy, start, kAccuracy, kLoose);
+  Shape best_start(double discrepancy) {
+    const LeastSquaresProblem problem = problem_.over_shapes(discrepancy);
+    LeastSquaresSolution best{{}, std::numeric_limits<double>::infinity(), false};
+    for (Shape& start : problem_.starts(discrepancy)) {
+      LeastSquaresSolution s = least_squares(problem, std::move(start), kLoose);
+      if (s.sum_of_squares < best.sum_of_squares) best = std::move(s);
+    }
+    if (best.x.empty()) {
+      throw NothingUsable(
+          "no curve fits the harmonics: found no fundamental that rises with the drive; expected "
+          "one "
+          "in phase with the input (is there any output, and is it given upright?)");
+    }
+    return std::move(best.x);
   }
 
-  Trial polished(const Trial& t) { return trial(t.discrepancy, t.solution.x); }
+  /// `t`, or what the grid's best starts lead to where that is better.
+  Trial restarted(Trial t) {
+    const double before = t.minus_2_log_likelihood;
+    for (const Shape& start : problem_.starts(t.discrepancy)) {
+      Trial other = trial(t.discrepancy, start, kLoose);
+      if (better(other, t)) t = std::move(other);
+    }
+    return t.minus_2_log_likelihood < before ? trial(t.discrepancy, t.solution.x) : t;
+  }
+
+  Trial polished(const Trial& t) { return trial(t.discrepancy, t.solution.x, kFine); }
 
   /// The discrepancy between the neighbours of `t` that is likeliest (Brent, Algorithms for
   /// Minimization without Derivatives, 1973, ch. 5), every other parameter fitted anew at each.
@@ -122,8 +134,8 @@ FittedParameter positive(double value, double log_u) {
 
 double reach_of(const SigmoidFamily& family, const SigmoidParameters& p, double input_peak) {
   const double swing = p.drive * input_peak;
-  return 0.5 * (family.value(p.bias + swing, p.sharpness) -
-                family.value(p.bias - swing, p.sharpness));
+  return 0.5 *
+         (family.value(p.bias + swing, p.sharpness) - family.value(p.bias - swing, p.sharpness));
 }
 
 }  // namespace
@@ -145,18 +157,19 @@ FittedFamily fit_family(const SigmoidFamily& family, const HarmonicData& data,
   f.parameters = curve_parameters + (reaches ? 0 : 1);
   f.discrepancy = best.discrepancy;
 
-  const Fitted& x = best.solution.x;
-  const SigmoidParameters p = search.problem().parameters(x);
-  f.converged = best.solution.converged && !search.problem().degenerate(x);
+  HarmonicProblem& problem = search.problem();
+  const Shape& shape = best.solution.x;
+  const SigmoidParameters p = problem.parameters(shape, best.discrepancy);
+  f.converged = best.solution.converged && !problem.degenerate(shape);
 
-  const LeastSquaresProblem measured = search.problem().at(0.0, kAccuracy);
+  Shape all{std::log(p.limit)};
+  all.insert(all.end(), shape.begin(), shape.end());
   std::vector<double> r(static_cast<std::size_t>(f.data));
-  measured.evaluate(x, r, {});
+  problem.over_all(0.0).evaluate(all, r, {});
   for (const double one : r) f.chi_square += one * one;
 
-  const std::vector<double> covariance =
-      inverse_fisher(search.problem().at(best.discrepancy, kAccuracy), x);
-  const auto u = [&](std::size_t j) { return std::sqrt(covariance[j * x.size() + j]); };
+  const std::vector<double> covariance = inverse_fisher(problem.over_all(best.discrepancy), all);
+  const auto u = [&](std::size_t j) { return std::sqrt(covariance[j * all.size() + j]); };
   f.limit = positive(p.limit, std::hypot(u(0), options.return_relative_u));
   f.drive = positive(p.drive, std::hypot(u(1), options.send_relative_u));
   f.bias = {p.bias, u(2), p.bias - kNormal95 * u(2), p.bias + kNormal95 * u(2)};

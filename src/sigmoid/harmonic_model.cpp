@@ -25,7 +25,8 @@ HarmonicModel::HarmonicModel(const std::vector<FitDatum>& data, int points)
     }
     cosines_.push_back(std::move(c));
   }
-  for (int k = 0; k < points; ++k) nodes_.push_back(std::cos(std::numbers::pi * (k + 0.5) / points));
+  for (int k = 0; k < points; ++k)
+    nodes_.push_back(std::cos(std::numbers::pi * (k + 0.5) / points));
 }
 
 std::vector<ModelledHarmonic> HarmonicModel::evaluate(const SigmoidFamily& family,

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Harmonics of a family's curve at every drive of the data, with their derivatives by limit, drive, bias
-// and sharpness.
+// Harmonics of a family's curve at every drive of the data, with their derivatives by limit, drive,
+// bias and sharpness.
 #pragma once
 
 #include <vector>
@@ -17,8 +17,8 @@ struct ModelledHarmonic {
 
 class HarmonicModel {
  public:
-  /// `points`: quadrature points per half period (the response to a cosine is even in time, so half a
-  /// period holds it all); midpoint rule, which converges geometrically for analytic curves
+  /// `points`: quadrature points per half period (the response to a cosine is even in time, so half
+  /// a period holds it all); midpoint rule, which converges geometrically for analytic curves
   /// (Trefethen & Weideman, SIAM Review 56(3) 2014).
   HarmonicModel(const std::vector<FitDatum>& data, int points);
 
@@ -34,8 +34,8 @@ class HarmonicModel {
   const std::vector<FitDatum>& data_;
   int points_;
   std::vector<Group> groups_;
-  std::vector<double> nodes_;                   // cos theta_k
-  std::vector<std::vector<double>> cosines_;    // by order: weight * cos(n theta_k)
+  std::vector<double> nodes_;                 // cos theta_k
+  std::vector<std::vector<double>> cosines_;  // by order: weight * cos(n theta_k)
 };
 
 }  // namespace kneeprint

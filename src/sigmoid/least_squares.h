@@ -38,10 +38,10 @@ struct LeastSquaresSolution {
 LeastSquaresSolution least_squares(const LeastSquaresProblem& problem, std::vector<double> start,
                                    const LeastSquaresOptions& options = {});
 
-/// (J^T J)^-1 at x, row by row (parameters x parameters): the covariance of the parameters when every
-/// residual has unit variance. From the singular values of J with its columns scaled to unit length,
-/// so parameters of any size mix. Directions that the data do not see (below 1e-12 of the strongest
-/// after scaling) get that ratio's variance: large, finite, never NaN.
+/// (J^T J)^-1 at x, row by row (parameters x parameters): the covariance of the parameters when
+/// every residual has unit variance. From the singular values of J with its columns scaled to unit
+/// length, so parameters of any size mix. Directions that the data do not see (below 1e-12 of the
+/// strongest after scaling) get that ratio's variance: large, finite, never NaN.
 std::vector<double> inverse_fisher(const LeastSquaresProblem& problem, std::span<const double> x);
 
 }  // namespace kneeprint

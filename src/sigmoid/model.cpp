@@ -159,6 +159,10 @@ Model read_model(const std::filesystem::path& file) {
   model.frequency_checked = f.boolean("frequency_checked");
   const JsonFields families = f.object("families");
   const JsonFields holdout = f.object("holdout");
+  std::vector<std::string> known;
+  for (const SigmoidFamily& family : sigmoid_families()) known.emplace_back(family.id);
+  families.allow_only(known);
+  holdout.allow_only(known);
   // Registry order, whatever order the file has.
   for (const SigmoidFamily& family : sigmoid_families()) {
     const std::string id(family.id);

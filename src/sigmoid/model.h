@@ -23,19 +23,22 @@ struct HoldoutFamily {
   std::string family;
   std::vector<HoldoutPoint> points;
   int compared = 0;
-  double rms_error_db = 0.0;   ///< over the compared points, equal weight per point
+  double rms_error_db = 0.0;  ///< over the compared points, equal weight per point
   double worst_error_db = 0.0;
 };
 
 struct Model {
   FitResult fit;
-  int polarity = 0;              ///< +1 upright, -1 inverting, 0 not stated
+  int polarity = 0;  ///< +1 upright, -1 inverting, 0 not stated
   double fit_frequency_hz = 0.0;
-  std::string axis_unit = "V";   ///< of x and y: "V", "FS", or "relative" (reel: y over the lowest rung's gain)
+  std::string axis_unit =
+      "V";  ///< of x and y: "V", "FS", or "relative" (reel: y over the lowest rung's gain)
   std::string drive_unit = "dBu";
-  bool frequency_dependent = false;  ///< the plan's frequencies disagree: then no two-tone is a hold-out
-  bool frequency_checked = false;    ///< the plan had several frequencies to compare
-  std::vector<HoldoutFamily> holdout;  ///< one per family, registry order; empty without two-tone takes
+  bool frequency_dependent =
+      false;  ///< the plan's frequencies disagree: then no two-tone is a hold-out
+  bool frequency_checked = false;  ///< the plan had several frequencies to compare
+  std::vector<HoldoutFamily>
+      holdout;  ///< one per family, registry order; empty without two-tone takes
 };
 
 /// Fields: best.{family,polarity,parameters.{limit,drive,bias,sharpness}.{value,standard_error,

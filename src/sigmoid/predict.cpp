@@ -13,8 +13,7 @@ namespace {
 // The integrands are even in every phase, so half a period serves: its trapezoid points are
 // theta_k = 2 pi k / points for k = 0 .. points/2, the two ends counting half.
 struct HalfPeriod {
-  explicit HalfPeriod(int count)
-      : points(count), size(static_cast<std::size_t>(count) / 2 + 1) {}
+  explicit HalfPeriod(int count) : points(count), size(static_cast<std::size_t>(count) / 2 + 1) {}
 
   double weight(std::size_t k) const { return (k == 0 || k + 1 == size ? 1.0 : 2.0) / points; }
   double cosine(int n, std::size_t k) const {
@@ -55,8 +54,7 @@ std::vector<double> sine_harmonics(const std::function<double(double)>& curve, d
 }
 
 std::vector<double> two_tone_products(const std::function<double(double)>& curve, double u1,
-                                      double u2,
-                                      const std::vector<std::pair<int, int>>& products,
+                                      double u2, const std::vector<std::pair<int, int>>& products,
                                       int points) {
   const HalfPeriod half(points);
   std::map<int, std::vector<double>> rows;

@@ -11,8 +11,8 @@ namespace kneeprint {
 
 /// Cosine-series coefficients H_0 .. H_orders (signed peaks) of curve(A cos theta), by the periodic
 /// trapezoid rule, which converges geometrically for analytic curves (Trefethen & Weideman, SIAM
-/// Review 56(3) 2014). H_n read so holds H_(points-n), H_(points+n), ... as well (aliasing): a curve
-/// with a corner wants more points. `points` per period: even, > 2 * orders.
+/// Review 56(3) 2014). H_n read so holds H_(points-n), H_(points+n), ... as well (aliasing): a
+/// curve with a corner wants more points. `points` per period: even, > 2 * orders.
 std::vector<double> sine_harmonics(const std::function<double(double)>& curve, double amplitude,
                                    int orders, int points = 512);
 
@@ -20,8 +20,7 @@ std::vector<double> sine_harmonics(const std::function<double(double)>& curve, d
 /// independent (incommensurate tones): 2-D trapezoid rule. (k1, k2) != (0, 0). `points` per period
 /// of either tone: even, > 2 max(|k1|, |k2|).
 std::vector<double> two_tone_products(const std::function<double(double)>& curve, double u1,
-                                      double u2,
-                                      const std::vector<std::pair<int, int>>& products,
+                                      double u2, const std::vector<std::pair<int, int>>& products,
                                       int points = 256);
 
 }  // namespace kneeprint

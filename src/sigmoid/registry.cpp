@@ -27,8 +27,8 @@ const SigmoidFamily* find_family(std::string_view id) {
 }
 
 double evaluate(const SigmoidFamily& family, const SigmoidParameters& p, double x) {
-  return p.limit * (family.value(p.drive * x + p.bias, p.sharpness) -
-                    family.value(p.bias, p.sharpness));
+  return p.limit *
+         (family.value(p.drive * x + p.bias, p.sharpness) - family.value(p.bias, p.sharpness));
 }
 
 }  // namespace kneeprint

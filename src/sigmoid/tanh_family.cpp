@@ -19,9 +19,11 @@ double by_sharpness(double, double) { return 0.0; }
 }  // namespace
 
 SigmoidFamily tanh_family() {
-  return {"tanh", "hyperbolic tangent", "tanh(z)", false, 1.0,
-          1.0,    value,                slope,     by_sharpness,
-          "NIST DLMF 4.28.4; slope DLMF 4.34.8 (numbers from memory)"};
+  return {"tanh",       "hyperbolic tangent",
+          "tanh(z)",    false,
+          1.0,          1.0,
+          value,        slope,
+          by_sharpness, "NIST DLMF 4.28.4; slope DLMF 4.34.8 (numbers from memory)"};
 }
 
 }  // namespace kneeprint

@@ -4,9 +4,11 @@
 #include <fftw3.h>
 
 #include <algorithm>
+#include <limits>
 #include <map>
 #include <memory>
 #include <mutex>
+#include <stdexcept>
 
 namespace kneeprint {
 namespace {
@@ -16,52 +18,67 @@ struct PlanDeleter {
 };
 using PlanPtr = std::unique_ptr<fftw_plan_s, PlanDeleter>;
 
-// FFTW's planner is not thread-safe; executing a plan on other arrays is.
-std::mutex planner;
+fftw_complex* raw(std::complex<double>* p) { return reinterpret_cast<fftw_complex*>(p); }
 
-// FFTW_ESTIMATE measures nothing, so the same length gives the same plan and the same bits every time.
-// FFTW_UNALIGNED lets one plan serve any vector.
-fftw_plan forward_plan(std::size_t n) {
-  static std::map<std::size_t, PlanPtr> plans;
-  const std::scoped_lock lock(planner);
-  PlanPtr& plan = plans[n];
-  if (!plan) {
-    std::vector<double> in(n);
-    std::vector<std::complex<double>> out(n / 2 + 1);
-    plan.reset(fftw_plan_dft_r2c_1d(static_cast<int>(n), in.data(),
-                                    reinterpret_cast<fftw_complex*>(out.data()),
-                                    FFTW_ESTIMATE | FFTW_UNALIGNED | FFTW_PRESERVE_INPUT));
-  }
-  return plan.get();
+// FFTW_ESTIMATE measures nothing, so the same length gives the same plan and the same bits every
+// time. FFTW_UNALIGNED lets one plan serve any vector.
+PlanPtr make_forward(int n) {
+  std::vector<double> in(static_cast<std::size_t>(n));
+  std::vector<std::complex<double>> out(in.size() / 2 + 1);
+  return PlanPtr(fftw_plan_dft_r2c_1d(n, in.data(), raw(out.data()),
+                                      FFTW_ESTIMATE | FFTW_UNALIGNED | FFTW_PRESERVE_INPUT));
 }
 
-fftw_plan inverse_plan(std::size_t n) {
-  static std::map<std::size_t, PlanPtr> plans;
-  const std::scoped_lock lock(planner);
-  PlanPtr& plan = plans[n];
-  if (!plan) {
-    std::vector<std::complex<double>> in(n / 2 + 1);
-    std::vector<double> out(n);
-    plan.reset(fftw_plan_dft_c2r_1d(static_cast<int>(n), reinterpret_cast<fftw_complex*>(in.data()),
-                                    out.data(), FFTW_ESTIMATE | FFTW_UNALIGNED));
-  }
-  return plan.get();
+PlanPtr make_inverse(int n) {
+  std::vector<double> out(static_cast<std::size_t>(n));
+  std::vector<std::complex<double>> in(out.size() / 2 + 1);
+  return PlanPtr(
+      fftw_plan_dft_c2r_1d(n, raw(in.data()), out.data(), FFTW_ESTIMATE | FFTW_UNALIGNED));
 }
+
+// The plans of one direction. Executing a plan on other arrays is thread-safe; planning is not, not
+// even for two lengths at once, hence one lock for both directions.
+class Plans {
+ public:
+  explicit Plans(PlanPtr (*make)(int)) : make_(make) {}
+
+  fftw_plan of(std::size_t n) {
+    if (n == 0) throw std::invalid_argument("a transform needs at least one sample");
+    if (n > static_cast<std::size_t>(std::numeric_limits<int>::max())) {
+      throw std::invalid_argument("a transform holds at most 2^31 - 1 samples");
+    }
+    static std::mutex planner;
+    const std::scoped_lock lock(planner);
+    PlanPtr& plan = plans_[n];
+    if (!plan) plan = make_(static_cast<int>(n));
+    return plan.get();
+  }
+
+ private:
+  PlanPtr (*make_)(int);
+  std::map<std::size_t, PlanPtr> plans_;
+};
 
 }  // namespace
 
 std::vector<std::complex<double>> forward_fft(std::span<const double> x) {
+  static Plans plans(make_forward);
+  const fftw_plan plan = plans.of(x.size());
   std::vector<std::complex<double>> out(x.size() / 2 + 1);
   // FFTW takes a plain pointer but, with FFTW_PRESERVE_INPUT, leaves the input as it is.
-  fftw_execute_dft_r2c(forward_plan(x.size()), const_cast<double*>(x.data()),
-                       reinterpret_cast<fftw_complex*>(out.data()));
+  fftw_execute_dft_r2c(plan, const_cast<double*>(x.data()), raw(out.data()));
   return out;
 }
 
 std::vector<double> inverse_fft(std::span<const std::complex<double>> spectrum, std::size_t size) {
+  static Plans plans(make_inverse);
+  const fftw_plan plan = plans.of(size);
+  if (spectrum.size() != size / 2 + 1) {
+    throw std::invalid_argument("an inverse transform of N samples needs N/2 + 1 spectrum values");
+  }
   std::vector<std::complex<double>> in(spectrum.begin(), spectrum.end());  // c2r destroys its input
   std::vector<double> out(size);
-  fftw_execute_dft_c2r(inverse_plan(size), reinterpret_cast<fftw_complex*>(in.data()), out.data());
+  fftw_execute_dft_c2r(plan, raw(in.data()), out.data());
   for (double& v : out) v /= static_cast<double>(size);
   return out;
 }

@@ -10,7 +10,8 @@
 namespace kneeprint {
 
 /// X[k] = sum_n x[n] exp(-j 2 pi k n / N), k = 0 .. N/2 (unnormalised). N >= 1, any factors.
-/// Thread-safe; the plan of each length is made on first use (FFTW_ESTIMATE: bit-repeatable) and reused.
+/// Thread-safe; the plan of each length is made on first use (FFTW_ESTIMATE: bit-repeatable) and
+/// reused.
 std::vector<std::complex<double>> forward_fft(std::span<const double> x);
 
 /// The inverse, divided by N. `spectrum` has size/2 + 1 values.

@@ -12,8 +12,8 @@ namespace kneeprint {
 class TriodeTable {
  public:
   /// Volts; beyond them the nearest end holds. They enclose what inputs of +-20 V can bring about.
-  static constexpr double kLowestU = -14.0, kHighestU = 7.0;
-  static constexpr double kLowestSupply = 294.0, kHighestSupply = 320.0;
+  static constexpr double kLowestU = -14.0, kHighestU = 9.0;
+  static constexpr double kLowestSupply = 296.0, kHighestSupply = 326.0;
 
   explicit TriodeTable(const TriodeCircuit& circuit);
 

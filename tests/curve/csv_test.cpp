@@ -100,7 +100,7 @@ TEST_CASE("headers: the columns that scripts rely on, then the further ones") {
         "flag,level_u_db,relative_low_db,relative_high_db,in_phase,quadrature,component_u,dof\n");
   CHECK(intermod_csv(none) ==
         "method,f1_hz,f2_hz,drive,level_unit,product,percent,db,expanded_u_db,floor_db,flag,"
-        "am_percent,pm_percent\n");
+        "am_percent,pm_percent,blocks,settled_after_s\n");
   CHECK(response_csv(none) == std::string(kResponseHeader) + "\n");
 }
 
@@ -158,7 +158,8 @@ TEST_CASE("every double, cell, flag and unit comes back, and the bytes with them
                  p.drive != q.drive || p.unit != q.unit || p.product != q.product ||
                  p.percent != q.percent || p.db != q.db || p.expanded_u_db != q.expanded_u_db ||
                  p.floor_db != q.floor_db || p.flag != q.flag || p.am_percent != q.am_percent ||
-                 p.pm_percent != q.pm_percent;
+                 p.pm_percent != q.pm_percent || p.blocks != q.blocks ||
+                 p.settled_after_s != q.settled_after_s;
     const ResponsePoint &r = c.responses[i], &s = back.responses[i];
     different += r.frequency_hz != s.frequency_hz || r.drive != s.drive || r.unit != s.unit ||
                  r.order != s.order || r.magnitude_db != s.magnitude_db ||

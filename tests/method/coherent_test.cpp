@@ -8,7 +8,8 @@
 
 using namespace kneeprint;
 
-TEST_CASE("whole cycles fill the block, the shift is under 0.1 %, harmonics keep clear of the mains") {
+TEST_CASE(
+    "whole cycles fill the block, the shift is under 0.1 %, harmonics keep clear of the mains") {
   for (const double rate : {44100.0, 48000.0, 88200.0, 96000.0, 176400.0, 192000.0}) {
     for (const double asked : {31.5, 41.0, 63.0, 100.0, 250.0, 997.0, 1000.0, 4990.0, 10000.0}) {
       CAPTURE(rate);
@@ -21,7 +22,8 @@ TEST_CASE("whole cycles fill the block, the shift is under 0.1 %, harmonics keep
       CHECK(t.block % static_cast<std::size_t>(rate / 10.0) == 0);
       for (int n = 1; n <= 10; ++n) {
         for (const double mains : {50.0, 60.0}) {
-          // 100 Hz and 250 Hz stand on multiples themselves: 0.1 % of them is all the room there is.
+          // 100 Hz and 250 Hz stand on multiples themselves: 0.1 % of them is all the room there
+          // is.
           const double least = asked == 100.0 ? 0.1 : asked == 250.0 ? 0.2 : 1.0;
           CHECK(std::abs(std::remainder(n * t.frequency.value(), mains)) >= least * (1.0 - 1e-6));
         }

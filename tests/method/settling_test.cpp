@@ -55,7 +55,7 @@ TEST_CASE("noise alone is rarely called unsettled") {
     for (double& v : y) v = noise(random);
     unsettled += !judge(y, 0.02, 4, 0.5).settled;
   }
-  // Two windows are tried at three standard uncertainties: well under 2 % of 1000, binomial bound at
-  // 0.1 % for p = 0.01 is 20.
+  // Two windows are tried at three standard uncertainties: well under 2 % of 1000, binomial bound
+  // at 0.1 % for p = 0.01 is 20.
   CHECK(unsettled <= 20);
 }

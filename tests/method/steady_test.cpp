@@ -34,7 +34,7 @@ TEST_CASE("a polynomial's harmonic series") {
     CAPTURE(n);
     CHECK(std::abs(peak(c, n) - expected[n - 1]) < 1e-12);
   }
-  CHECK(std::abs(*c.harmonics[1].phase_deg) < 1e-6);                      // a2 > 0: with the crest
+  CHECK(std::abs(*c.harmonics[1].phase_deg) < 1e-6);                    // a2 > 0: with the crest
   CHECK(std::abs(std::abs(*c.harmonics[2].phase_deg) - 180.0) < 1e-6);  // a3 < 0: compressive
   CHECK(*c.harmonics[1].relative_db ==
         doctest::Approx(20.0 * std::log10(0.036096 / 0.782848)).epsilon(1e-12));
@@ -64,10 +64,9 @@ TEST_CASE("exponential: modified Bessel functions (DLMF 10.35.2)") {
 TEST_CASE("hard clipper and the square-wave limit, at a low frequency where aliases stay small") {
   // 4 A/L, 41 Hz: 585 orders fit below half the rate; what folds is bounded by the tail of 1/n^2.
   const TakeSpec spec = spec_for("steady", 41.0, 0.0);
-  const Curves c =
-      read(spec, response(spec, [](double x) { return std::clamp(x, -0.5, 0.5); }));
-  // A/L = 2: H1 +1.217995562088, H3 -0.275664447711, H5 +0.055132889542 for L = 1 (closed form of the
-  // describing function's harmonics), halved here.
+  const Curves c = read(spec, response(spec, [](double x) { return std::clamp(x, -0.5, 0.5); }));
+  // A/L = 2: H1 +1.217995562088, H3 -0.275664447711, H5 +0.055132889542 for L = 1 (closed form of
+  // the describing function's harmonics), halved here.
   CHECK(std::abs(peak(c, 1) - 0.5 * 1.217995562088) < 1e-5);
   CHECK(std::abs(peak(c, 3) + 0.5 * 0.275664447711) < 1e-5);
   CHECK(std::abs(peak(c, 5) - 0.5 * 0.055132889542) < 1e-5);
@@ -78,19 +77,19 @@ TEST_CASE("hard clipper and the square-wave limit, at a low frequency where alia
   // sqrt(sum 1/n^2, n = 3, 5 ... 19) = 45.6860275272 %; all orders: sqrt(pi^2/8 - 1) = 48.34258 %.
   CHECK(*s.levels[0].thd_f_percent == doctest::Approx(45.6860275272).epsilon(2e-4));
   CHECK(s.levels[0].thd_orders == 20);
-  // THD+N up to 20 kHz takes in orders to 487: 48.34 % less the tail beyond (sum of 1/n^2 over odd n
-  // from 489: 1/976), plus what sampling folds back of the orders above 24 kHz (1/1170, spread evenly
-  // over 24 kHz), over the total.
-  const double below_20k = std::sqrt(std::pow(0.483425847608679, 2) - 1.0 / 976.0 +
-                                     20.0 / 24.0 / 1170.0);
+  // THD+N up to 20 kHz takes in orders to 487: 48.34 % less the tail beyond (sum of 1/n^2 over odd
+  // n from 489: 1/976), plus what sampling folds back of the orders above 24 kHz (1/1170, spread
+  // evenly over 24 kHz), over the total.
+  const double below_20k =
+      std::sqrt(std::pow(0.483425847608679, 2) - 1.0 / 976.0 + 20.0 / 24.0 / 1170.0);
   CHECK(*s.levels[0].thdn_percent ==
         doctest::Approx(100.0 * below_20k / std::hypot(1.0, below_20k)).epsilon(2e-4));
 }
 
 TEST_CASE("THD_R follows THD_F, SINAD is the other side of the residual") {
   const TakeSpec spec = spec_for("steady", 997.0, -6.0);
-  const Curves c =
-      read(spec, response(spec, [](double x) { return std::tanh(2.0 * x + 0.3) - std::tanh(0.3); }));
+  const Curves c = read(
+      spec, response(spec, [](double x) { return std::tanh(2.0 * x + 0.3) - std::tanh(0.3); }));
   const LevelPoint& p = c.levels[0];
   const double f = *p.thd_f_percent / 100.0;
   CHECK(*p.thd_r_percent / 100.0 == doctest::Approx(f / std::sqrt(1 + f * f)).epsilon(1e-12));
@@ -98,7 +97,8 @@ TEST_CASE("THD_R follows THD_F, SINAD is the other side of the residual") {
   // SINAD = H1 / residual, THD+N = residual / total.
   CHECK(std::pow(10.0, *p.sinad_db / 20.0) ==
         doctest::Approx(std::sqrt(1 - n * n) / n).epsilon(1e-9));
-  const double even = std::hypot(peak(c, 2), peak(c, 4), std::hypot(peak(c, 6), peak(c, 8), peak(c, 10)));
+  const double even =
+      std::hypot(peak(c, 2), peak(c, 4), std::hypot(peak(c, 6), peak(c, 8), peak(c, 10)));
   const double odd = std::hypot(peak(c, 3), peak(c, 5), std::hypot(peak(c, 7), peak(c, 9)));
   CHECK(*p.even_odd_db == doctest::Approx(20 * std::log10(even / odd)).epsilon(1e-9));
 }
@@ -133,8 +133,8 @@ TEST_CASE("noise: scatter as the Cramer-Rao bound has it, weak harmonics become 
   constexpr int kRuns = 60;
   std::size_t samples = 0;
   for (unsigned run = 0; run < kRuns; ++run) {
-    const Waveform take =
-        response(spec, [](double x) { return x + 0.05 * x * x; }, sigma, 100 + run);
+    const Waveform take = response(
+        spec, [](double x) { return x + 0.05 * x * x; }, sigma, 100 + run);
     const Curves c = read(spec, take);
     sum_squares += std::pow(peak(c, 2) - h2, 2);
     sum_u += c.harmonics[1].component_u;
@@ -179,8 +179,30 @@ TEST_CASE("flags: clipped, beyond the sample rate, unsteady") {
 TEST_CASE("silence and noise in place of a response are flagged, without a crash or a NaN") {
   const TakeSpec spec = spec_for("steady", 997.0, -12.0);
   for (const double sigma : {0.0, 1e-5}) {
-    const Curves c = read(spec, response(spec, [](double) { return 0.0; }, sigma));
+    const Curves c = read(spec, response(
+                                    spec, [](double) { return 0.0; }, sigma));
     CHECK(c.levels.at(0).flag == Flag::noise);
     CHECK_FALSE(c.levels[0].thd_f_percent.has_value());
+  }
+}
+
+TEST_CASE("a perfect wire gives no infinite or undefined figure") {
+  const TakeSpec spec = spec_for("steady", 997.0, -12.0);
+  for (const bool rounded : {false, true}) {
+    const Curves c = read(spec, response(spec, [&](double x) {
+                            return rounded ? static_cast<double>(static_cast<float>(x)) : x;
+                          }));
+    const LevelPoint& p = c.levels.at(0);
+    for (const Cell& cell : {p.output, p.gain_db, p.thd_f_percent, p.thdn_percent, p.noise,
+                             p.sinad_db, p.even_odd_db, p.thd_f_u_percent, p.thdn_u_percent}) {
+      if (cell) CHECK(std::isfinite(*cell));
+    }
+    for (const HarmonicPoint& h : c.harmonics) {
+      for (const Cell& cell : {h.level, h.relative_db, h.expanded_u_db, h.relative_high_db}) {
+        if (cell) CHECK(std::isfinite(*cell));
+      }
+    }
+    // Double arithmetic: far under -250 dB; stored as float32: under -140 dB.
+    if (p.thd_f_percent) CHECK(*p.thd_f_percent < (rounded ? 1e-5 : 1e-10));
   }
 }

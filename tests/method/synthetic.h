@@ -2,9 +2,9 @@
 // Takes made by passing a stimulus through a memoryless curve, with seeded noise where asked.
 #pragma once
 
-#include <functional>
 #include <algorithm>
 #include <cmath>
+#include <functional>
 #include <numbers>
 #include <random>
 #include <stdexcept>

@@ -26,7 +26,8 @@ const IntermodPoint& row(const Curves& c, const std::string& product) {
 }  // namespace
 
 TEST_CASE("smpte products of a cubic, exact amplitudes") {
-  // y = x + 0.02 x^2 - 0.01 x^3, U1 0.8, U2 0.2: f2 0.19802, f2+-f1 0.0032, f2+-2f1 -0.00096 (algebra).
+  // y = x + 0.02 x^2 - 0.01 x^3, U1 0.8, U2 0.2: f2 0.19802, f2+-f1 0.0032, f2+-2f1 -0.00096
+  // (algebra).
   const TakeSpec spec = spec_for("smpte", 0.0, 0.0);
   const Curves c = read(spec, response(spec, cubic));
   CHECK(*row(c, "m2").percent == doctest::Approx(3.231996768).epsilon(1e-9));
@@ -54,7 +55,8 @@ TEST_CASE("pure phase modulation reads as PM, not as AM") {
   const double u1 = 0.8 * sine_peak(spec.send), u2 = 0.2 * sine_peak(spec.send);
   for (std::size_t n = s.hold.first_block; n < s.hold.end(); ++n) {
     const double t = 2.0 * std::numbers::pi * static_cast<double>(n - s.hold.first_block) / 48000.0;
-    take.samples[n] = u1 * std::cos(60.0 * t) + u2 * std::cos(7000.0 * t + 0.01 * std::cos(60.0 * t));
+    take.samples[n] =
+        u1 * std::cos(60.0 * t) + u2 * std::cos(7000.0 * t + 0.01 * std::cos(60.0 * t));
   }
   const Curves c = read(spec, take);
   // Index 0.01: sidebands J1(0.01) / J0(0.01) = 0.005 each, in quadrature.
@@ -68,8 +70,8 @@ TEST_CASE("what stands on the sidebands with f2 alone is not called intermodulat
   Waveform take = s.wave;
   // A tone at 7060 Hz that belongs to the rig: it is there all the time.
   for (std::size_t n = 0; n < take.samples.size(); ++n) {
-    take.samples[n] += 1e-4 * std::cos(2.0 * std::numbers::pi * 7060.0 *
-                                       static_cast<double>(n) / 48000.0);
+    take.samples[n] +=
+        1e-4 * std::cos(2.0 * std::numbers::pi * 7060.0 * static_cast<double>(n) / 48000.0);
   }
   CHECK(row(read(spec, take), "m2").flag == Flag::floor);
   // The same sideband only while both tones sound is the unit's.
@@ -77,9 +79,11 @@ TEST_CASE("what stands on the sidebands with f2 alone is not called intermodulat
   CHECK(row(read(spec, honest), "m2").flag == Flag::none);
 }
 
-TEST_CASE("products under the noise are upper limits; at 44.1 kHz the upper d3 product is out of reach") {
+TEST_CASE(
+    "products under the noise are upper limits; at 44.1 kHz the upper d3 product is out of reach") {
   const TakeSpec spec = spec_for("ccif", 0.0, -20.0);
-  const Curves c = read(spec, response(spec, [](double x) { return x; }, 1e-4, 3));
+  const Curves c = read(spec, response(
+                                  spec, [](double x) { return x; }, 1e-4, 3));
   CHECK(row(c, "d2").flag == Flag::noise);
   CHECK(*row(c, "d2").percent > 0.0);
 

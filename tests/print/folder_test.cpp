@@ -5,9 +5,9 @@
 
 #include <algorithm>
 
+#include "platform/read_text.h"
 #include "print/checksum.h"
 #include "quantity/failure.h"
-#include "platform/read_text.h"
 #include "temporary_folder.h"
 
 namespace kneeprint {

@@ -46,8 +46,9 @@ TEST_CASE("no return, another signal, clipping and a missing reference are told 
   const Waveform sent = chain_check_stimulus(kRate, LevelDbfs(-40.0));
   CHECK_THROWS_AS(judge_chain(sent, {returned(sent, 100, 0.0, 0.0)}), NothingUsable);
   CHECK_THROWS_AS(judge_chain(sent, {returned(sent, 100, 0.0, 1e-3)}), NothingUsable);
-  CHECK_THROWS_AS(judge_chain(sent, {returned(sent, 100, 0.5, 1e-6), returned(sent, 100, 0.0, 1e-4)}),
-                  NothingUsable);
+  CHECK_THROWS_AS(
+      judge_chain(sent, {returned(sent, 100, 0.5, 1e-6), returned(sent, 100, 0.0, 1e-4)}),
+      NothingUsable);
   Waveform hot = returned(sent, 100, 0.5, 0.0);
   hot.samples[500] = 1.0;
   CHECK_THROWS_AS(judge_chain(sent, {hot}), GuardStop);

@@ -19,8 +19,7 @@ Plan simple_plan() {
 
 Rig calibrated() {
   Rig r;
-  r.send_scale = r.return_scale =
-      LevelScale::calibrated(to_volts(LevelDbu(24.0)), Decibels(0.01));
+  r.send_scale = r.return_scale = LevelScale::calibrated(to_volts(LevelDbu(24.0)), Decibels(0.01));
   return r;
 }
 

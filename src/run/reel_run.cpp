@@ -1,0 +1,113 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include "run/reel_run.h"
+
+#include <fmt/format.h>
+
+#include <cmath>
+
+#include "platform/os.h"
+#include "print/checksum.h"
+#include "print/folder.h"
+#include "quantity/failure.h"
+#include "rig/reel.h"
+#include "run/schedule.h"
+#include "signal/wav.h"
+
+namespace kneeprint {
+namespace {
+
+// Everything about a reel follows from plan and rig.
+struct ReelPlan {
+  std::vector<TakeSpec> specs;
+  ReelLayout layout;
+};
+
+ReelPlan reel_plan(const Plan& plan, const Rig& rig, LevelDbfs ceiling) {
+  ReelPlan out;
+  const Ladder ladder = ladder_of(plan, rig, ceiling);
+  std::vector<std::size_t> lengths;
+  for (std::size_t rung = 0; rung < ladder.rungs.size(); ++rung) {
+    for (const TakeSpec& spec :
+         takes_of_rung(plan, rig, ladder.rungs[rung], static_cast<int>(rung))) {
+      out.specs.push_back(spec);
+      lengths.push_back(find_method(spec.method)->stimulus(spec, rig.rate).wave.samples.size());
+    }
+  }
+  out.layout = lay_out(lengths, rig.rate);
+  return out;
+}
+
+std::uint32_t code_of(const Plan& plan) {
+  return static_cast<std::uint32_t>(std::stoul(crc32_hex(plan_json(plan)), nullptr, 16));
+}
+
+LevelDbfs marker_level(LevelDbfs ceiling) { return std::min(LevelDbfs(-20.0), ceiling); }
+
+}  // namespace
+
+Seconds write_reel(const MeasureRequest& request) {
+  const LevelDbfs ceiling =
+      ceiling_of(request.plan, request.rig, request.ceiling, request.has_rig_file);
+  const ReelPlan reel = reel_plan(request.plan, request.rig, ceiling);
+  PrintFolder folder(request.into);
+  folder.begin(plan_json(request.plan), rig_json(request.rig),
+               {request.unit, request.seed, os::utc_now(), "kneeprint"});
+  std::vector<Waveform> stimuli;
+  for (const TakeSpec& spec : reel.specs) {
+    stimuli.push_back(find_method(spec.method)->stimulus(spec, request.rig.rate).wave);
+  }
+  const Waveform wave =
+      assemble(reel.layout, stimuli, code_of(request.plan), marker_level(ceiling));
+  std::filesystem::path part = folder.reel_wav();
+  part += ".part";
+  write_wav(part, {wave});
+  os::publish(part, folder.reel_wav());
+  return wave.duration();
+}
+
+void ingest_reel(const std::filesystem::path& path, const std::filesystem::path& file, int channel,
+                 Progress& progress) {
+  PrintFolder folder(path);
+  if (!folder.exists()) {
+    throw InputError(fmt::format("{}: no kneeprint here (no journal.jsonl); write the reel first",
+                                 path.string()));
+  }
+  const Plan plan =
+      parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_ids());
+  Rig rig = read_rig(folder.rig_file());
+  if (rig.kind != RigKind::reel) {
+    throw InputError(
+        fmt::format("{}: this kneeprint was measured directly, not by a reel", path.string()));
+  }
+  const std::vector<Waveform> channels = read_audio(file);
+  if (channel > static_cast<int>(channels.size())) {
+    throw InputError(fmt::format("{}: has {} channel(s), channel {} was asked for", file.string(),
+                                 channels.size(), channel));
+  }
+  const Waveform& recording = channels[static_cast<std::size_t>(channel - 1)];
+  const ReelPlan reel = reel_plan(plan, rig, ceiling_of(plan, rig, std::nullopt, true));
+  const ReelFound found = find_reel(recording, reel.layout, file.string());
+  check_code(found, code_of(plan), file.string());
+  progress.say(fmt::format("reel found {:.3f} s into the recording, {}, clock {:+.2f} ppm",
+                           found.start / recording.rate.value(),
+                           found.polarity > 0 ? "upright" : "inverted", found.clock_ppm));
+
+  rig.recorded_rate.reset();
+  if (recording.rate != rig.rate) rig.recorded_rate = recording.rate;
+  os::write_whole(folder.rig_file(), rig_json(rig));
+  const std::string now = os::utc_now();
+  for (std::size_t i = 0; i < reel.specs.size(); ++i) {
+    const TakeSpec& spec = reel.specs[i];
+    JournalTake take;
+    take.number = static_cast<int>(i) + 1;
+    take.method = spec.method;
+    take.frequency_hz = spec.asked.value();
+    take.rung = spec.rung;
+    take.send_dbfs = spec.send.value();
+    take.hold_s = spec.hold_blocks * find_method(spec.method)->block_length(spec, rig.rate).value();
+    take.started = take.ended = now;
+    folder.keep_take(take, {cut(recording, found, reel.layout, reel.layout.slots[i])});
+  }
+}
+
+}  // namespace kneeprint
