@@ -19,7 +19,7 @@ std::optional<double> RigFloor::loop(LevelDbfs level, int order) const {
   const auto last = std::lower_bound(first, points_.end(), order + 1, of_order);
   if (first == last) return std::nullopt;
   if (level.value() <= first->level.value() + kRounding) return first->relative.ratio();
-  const auto above = std::find_if(first, last, [&](const FloorPoint& p) {
+  const auto above = std::find_if(first + 1, last, [&](const FloorPoint& p) {
     return p.level.value() >= level.value() - kRounding;
   });
   if (above == last) return std::nullopt;

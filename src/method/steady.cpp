@@ -9,6 +9,7 @@
 #include "method/coherent.h"
 #include "method/hold.h"
 #include "method/reading.h"
+#include "method/rig_curvature.h"
 
 namespace kneeprint {
 namespace {
@@ -109,6 +110,7 @@ class SteadyReading {
   TakeVerdict read(Curves& out);
 
  private:
+  void read_floor();
   void read_drive();
   void read_fundamental(LevelPoint& level);
   void read_harmonics(Curves& out, LevelPoint& level);
@@ -119,6 +121,9 @@ class SteadyReading {
 
   std::size_t bin(int order) const { return tone_.cycles * static_cast<std::size_t>(order); }
   double turn(int block) const { return std::arg(spectra_.at(block, tone_.cycles)); }
+  bool in_reach(int order) const {
+    return order * tone_.frequency.value() < kHighestShare * rig_.usable_rate(rate_).value();
+  }
   Line line(int order) const {
     return spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
   }
@@ -133,6 +138,7 @@ class SteadyReading {
   int first_ = 0;
   Flag take_flag_ = Flag::none;
   Line fundamental_;
+  std::vector<double> floor_;  // by order, relative to the fundamental; empty: unknown
   double drive_ = 0.0;  // level at the unit's input, in the rig's unit
   LevelDbfs return_level_;
   double output_type_a_db_ = 0.0;
@@ -171,6 +177,22 @@ void SteadyReading::read_fundamental(LevelPoint& level) {
   if (degrees > 120.0) level.polarity = -1.0;
 }
 
+// The rig's residual at these converter levels. Orders 2 and 3 bend the response as a whole, so they reach
+// every order of it; higher orders are taken as the cable showed them.
+void SteadyReading::read_floor() {
+  const auto loop = [&](int n) { return rig_.floor.at(spec_.send, return_level_, n); };
+  if (!loop(2) || !loop(3)) return;
+  std::vector<std::complex<double>> harmonics{spectra_.mean(0, first_, [](int) { return 0.0; }).mean};
+  for (int n = 1; n <= spec_.settings.orders; ++n) {
+    harmonics.push_back(in_reach(n) ? line(n).mean : 0.0);
+  }
+  for (auto& h : harmonics) h /= std::abs(fundamental_.mean);
+  floor_ = curvature_floor(harmonics, *loop(2), *loop(3));
+  for (std::size_t n = 4; n < floor_.size(); ++n) {
+    floor_[n] += loop(static_cast<int>(n)).value_or(0.0);
+  }
+}
+
 HarmonicPoint SteadyReading::blank(int order) const {
   HarmonicPoint p;
   p.frequency_hz = tone_.frequency.value();
@@ -198,7 +220,8 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
   p.dof = r.dof;
   if (p.order == 1) {
     p.phase_deg = 0.0;
-    p.component_u = line.u * rig_.ret.peak_per_full_scale;
+    const double own_floor = floor_.empty() ? 0.0 : floor_[1] * peak / std::numbers::sqrt2;
+    p.component_u = std::hypot(line.u, own_floor) * rig_.ret.peak_per_full_scale;
     p.dof = line.dof;
     p.level_u_db = coverage_factor_95(line.dof) *
                    std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
@@ -221,16 +244,15 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
     HarmonicPoint point = blank(n);
     ResponsePoint response{point.frequency_hz, drive_, point.unit, n, {}, {}, {}, Flag::none};
     const double f = n * tone_.frequency.value();
-    if (f >= highest) {
+    if (!in_reach(n)) {
       const std::array flags{take_flag_, Flag::alias};
       point.flag = response.flag = gravest(flags);
     } else {
       const Line l = line(n);
-      const auto floor_bound = n > 1 ? rig_.floor.at(spec_.send, return_level_, n) : std::nullopt;
-      const double floor = floor_bound.value_or(0.0);
+      const double floor = floor_.empty() ? 0.0 : floor_[static_cast<std::size_t>(n)];
       RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
       if (n == 1) r = {1.0, 0.0, l.dof, Flag::none};
-      if (floor_bound && floor > 0.0) point.floor_db = 20.0 * std::log10(floor);
+      if (floor > 0.0) point.floor_db = 20.0 * std::log10(floor);
       place(point, r, l);
       response.flag = point.flag;
       if (rig_.gain_known && point.level) response.magnitude_db = *point.level - drive_;
@@ -354,6 +376,7 @@ TakeVerdict SteadyReading::read(Curves& out) {
     out.levels.push_back(level);
     return verdict;
   }
+  read_floor();
   read_harmonics(out, level);
   read_residual(level);
   read_dc(level);

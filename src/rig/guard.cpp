@@ -28,24 +28,23 @@ std::string sentence(GuardReason reason) {
     case GuardReason::none:
       return "";
     case GuardReason::not_a_number:
-      return "the guard muted the send: the program asked for a sample that is no number. This is "
-             "a "
-             "fault of the program; please report it with the plan.";
+      return "the guard muted the send: the program asked for a sample that is no number. "
+             "This is a fault of the program; please report it with the plan.";
     case GuardReason::over_ceiling:
-      return "the guard muted the send: the program asked for more than the ceiling allows. This "
-             "is a "
-             "fault of the program; please report it with the plan.";
+      return "the guard muted the send: the program asked for more than the ceiling allows. "
+             "This is a fault of the program; please report it with the plan.";
     case GuardReason::return_hot:
-      return "the guard muted the send: the return reached full scale. Turn the input gain down or "
-             "put a "
-             "pad before the return; if the level stays although the send is silent, a loop is "
-             "closed "
-             "outside this program: turn down or unplug it.";
+      return "the guard muted the send: the return reached full scale. "
+             "Turn the input gain down or put a pad before the return; if the level stays although "
+             "the send is silent, a loop is closed outside this program: turn down or unplug it.";
     case GuardReason::cancelled:
       return "the send was muted by hand; what was taken is kept (--resume goes on)";
   }
   return "";
 }
+
+static_assert(std::atomic<int>::is_always_lock_free && std::atomic<bool>::is_always_lock_free,
+              "the audio thread takes no lock");
 
 Guard::Guard(GuardLimits limits, Hertz rate)
     : limits_(limits),
@@ -59,11 +58,14 @@ void Guard::process(std::span<const double> wanted, std::span<float> out) noexce
     const double x = wanted[n];
     if (!std::isfinite(x)) {
       mute(GuardReason::not_a_number);
-    } else if (std::abs(x) > ceiling_peak_) {
+      follows_ = false;
+    } else if (!(std::abs(x) <= ceiling_peak_)) {  // so that a ceiling that is NaN lets nothing out
       mute(GuardReason::over_ceiling);
-    } else {
-      last_sample_ = x;
+      follows_ = false;
     }
+    // A program that asked for the impossible is not believed again: what it asks next may be
+    // anything, and following it would put steps into the ramp.
+    if (follows_) last_sample_ = x;
     if (reason_.load(std::memory_order_relaxed) == 0) {
       out[n] = static_cast<float>(x);
       continue;

@@ -39,7 +39,8 @@ class Guard {
  public:
   Guard(GuardLimits limits, Hertz rate);
 
-  /// Copies `wanted` to `out` (same size) within the limits.
+  /// Copies `wanted` to `out` (same size) within the limits. While the ramp runs it fades `wanted`;
+  /// from the first sample that cannot be used on, it fades the last good one instead.
   void process(std::span<const double> wanted, std::span<float> out) noexcept;
   /// Looks at what came back; mutes at the return limit or at NaN.
   void watch(std::span<const float> returned) noexcept;
@@ -56,7 +57,8 @@ class Guard {
   float return_peak_;
   double ramp_step_;
   double ramp_phase_ = 0.0;   ///< 0 open .. 1 muted, touched by the audio thread alone
-  double last_sample_ = 0.0;  ///< what the ramp fades when `wanted` itself cannot be used
+  double last_sample_ = 0.0;  ///< last good one: what the ramp fades
+  bool follows_ = true;       ///< `wanted` has been usable so far
   std::atomic<int> reason_{0};
   std::atomic<bool> silent_{false};
 };

@@ -44,7 +44,7 @@ bool Player::process(std::span<const float> returned, std::span<const float> ref
 }
 
 double Player::progress() const {
-  return static_cast<double>(recorded()) / static_cast<double>(length());
+  return length() == 0 ? 1.0 : static_cast<double>(recorded()) / static_cast<double>(length());
 }
 
 }  // namespace kneeprint

@@ -16,11 +16,14 @@ namespace kneeprint {
 
 class Player {
  public:
-  /// `tail` samples are recorded after the stimulus ends (latency of the rig and more).
+  /// `tail` samples are recorded after the stimulus ends (latency of the rig and more). Stimulus
+  /// and guard outlive the player.
   Player(const Waveform& stimulus, std::size_t tail, bool with_reference, Guard& guard);
+  Player(Waveform&&, std::size_t, bool, Guard&) = delete;
 
-  /// One buffer of audio. `reference` is empty when none is wired. Returns false when done (all
-  /// recorded, or the guard is silent); the Port then stops.
+  /// One buffer of audio, of any size; `returned` and `out` are of the same. `reference` is too, or
+  /// empty when none is wired. Returns false when done (all recorded, or the guard is silent); the
+  /// Port then stops. Called again all the same, it records nothing and sends silence.
   bool process(std::span<const float> returned, std::span<const float> reference,
                std::span<float> out) noexcept;
 
@@ -33,7 +36,8 @@ class Player {
   int dropouts() const { return dropouts_; }
   std::size_t recorded() const { return position_; }
   std::size_t length() const { return returned_.size(); }
-  /// Share of the take that has passed, 0 .. 1; readable from any thread.
+  /// Share of the take that has passed, 0 .. 1 (1 for a take of no length); readable from any
+  /// thread.
   double progress() const;
   const std::vector<float>& returned() const { return returned_; }
   const std::vector<float>& reference() const { return reference_; }

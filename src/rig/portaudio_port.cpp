@@ -8,10 +8,12 @@
 #include <atomic>
 #include <cctype>
 #include <chrono>
-#include <cmath>
+#include <string>
+#include <vector>
 
 #include "platform/os.h"
 #include "quantity/failure.h"
+#include "signal/waveform.h"
 
 namespace kneeprint {
 namespace {
@@ -90,14 +92,44 @@ DeviceInfo pick_device(const std::string& wanted) {
                   names_of(matching)));
 }
 
-// The stream is opened once and runs until the port goes, silent between takes: starting and
-// stopping it for every take would shift the latency (and, on JACK, drop the connections).
-class PortAudioPort : public Port {
+using Clock = std::chrono::steady_clock;
+constexpr auto kStalled = std::chrono::seconds(5);  // longer than the buffers of any driver
+constexpr long kPollMilliseconds = 5;
+// Drivers may flag an underrun in their first buffers, when there is no input yet, and converters
+// thump when their clock starts: takes begin after both.
+constexpr Seconds kWarmUp{0.2};
+constexpr Seconds kLongestLatency{10.0};
+
+// Whether a count that ought to grow still does.
+class Growth {
  public:
-  explicit PortAudioPort(const LiveSettings& settings);
-  ~PortAudioPort() override;
-  const PortInfo& info() const override { return info_; }
-  void play(Player& player, int take) override;
+  bool stopped(std::size_t count) {
+    const auto now = Clock::now();
+    if (count != seen_) since_ = now;
+    seen_ = count;
+    return now - since_ > kStalled;
+  }
+
+ private:
+  std::size_t seen_ = 0;
+  Clock::time_point since_ = Clock::now();
+};
+
+// One full-duplex stream with all that its callback touches. It runs from the first take to the
+// last, silent between them: starting and stopping it for every take would shift the latency (and,
+// on JACK, drop the connections).
+class Stream {
+ public:
+  explicit Stream(const LiveSettings& settings);
+  ~Stream();
+  Stream(const Stream&) = delete;
+  Stream& operator=(const Stream&) = delete;
+
+  PortInfo info() const;
+  // Runs the player to its end; false when the device stops before that.
+  bool play(Player& player);
+  // Waits until so many frames have passed; false when the device has stopped calling.
+  bool runs_for(std::size_t frames) const;
 
  private:
   static int callback(const void* input, void* output, unsigned long frames,
@@ -105,81 +137,100 @@ class PortAudioPort : public Port {
                       void* self) noexcept;
   void serve(const float* const* in, float* const* out, unsigned long frames,
              PaStreamCallbackFlags flags) noexcept;
-  void wait_while(Player& player);
+  bool wait_for_end(Player& player) const;
 
   Library library_;
   LiveSettings settings_;
-  PortInfo info_;
+  DeviceInfo device_;
   int outputs_ = 0, inputs_ = 0;
   PaStream* stream_ = nullptr;
   std::atomic<Player*> player_{nullptr};
   // Raised around the callback's use of the player, so that play() never returns while it is in
   // use.
   std::atomic<bool> serving_{false};
-  std::atomic<unsigned long> callbacks_{0};
+  std::atomic<std::size_t> frames_{0};
+  std::atomic<std::size_t> buffer_{0};
 };
 
-PortAudioPort::PortAudioPort(const LiveSettings& settings) : settings_(settings) {
+static_assert(std::atomic<Player*>::is_always_lock_free &&
+                  std::atomic<std::size_t>::is_always_lock_free,
+              "the audio thread takes no lock");
+
+Stream::Stream(const LiveSettings& settings) : settings_(settings) {
+  if (settings.reference_channel == settings.return_channel) {
+    throw UsageError(
+        fmt::format("the reference and the return are both input {}: give them one each",
+                    settings.return_channel));
+  }
   const os::QuietStderr quiet;
-  const DeviceInfo device = pick_device(settings.device);
+  device_ = pick_device(settings.device);
   outputs_ = settings.send_channel;
   inputs_ = std::max(settings.return_channel, settings.reference_channel);
-  if (device.outputs < outputs_ || device.inputs < inputs_) {
+  if (device_.outputs < outputs_ || device_.inputs < inputs_) {
     throw DeviceError(fmt::format(
-        "\"{}\" has {} outputs and {} inputs; send {}, return {}{} were asked for", device.name,
-        device.outputs, device.inputs, settings.send_channel, settings.return_channel,
+        "\"{}\" has {} outputs and {} inputs; send {}, return {}{} were asked for", device_.name,
+        device_.outputs, device_.inputs, settings.send_channel, settings.return_channel,
         settings.reference_channel > 0 ? fmt::format(", reference {}", settings.reference_channel)
                                        : ""));
   }
   const double rate =
-      settings.rate.value() > 0.0 ? settings.rate.value() : device.default_rate.value();
-  const PaDeviceInfo* d = Pa_GetDeviceInfo(device.index);
-  const PaStreamParameters in{device.index, inputs_, paFloat32 | paNonInterleaved,
+      settings.rate.value() > 0.0 ? settings.rate.value() : device_.default_rate.value();
+  const PaDeviceInfo* d = Pa_GetDeviceInfo(device_.index);
+  const PaStreamParameters in{device_.index, inputs_, paFloat32 | paNonInterleaved,
                               d->defaultHighInputLatency, nullptr};
-  const PaStreamParameters out{device.index, outputs_, paFloat32 | paNonInterleaved,
+  const PaStreamParameters out{device_.index, outputs_, paFloat32 | paNonInterleaved,
                                d->defaultHighOutputLatency, nullptr};
   // No dither and no clipping by the library: what leaves is what the guard let through.
   PaError error = Pa_OpenStream(&stream_, &in, &out, rate, paFramesPerBufferUnspecified,
                                 paClipOff | paDitherOff, callback, this);
   if (error == paNoError) error = Pa_StartStream(stream_);
   if (error != paNoError) {
-    const PaHostErrorInfo* host = Pa_GetLastHostErrorInfo();
-    const std::string detail =
-        error == paUnanticipatedHostError ? fmt::format(" ({})", host->errorText) : "";
+    const std::string detail = error == paUnanticipatedHostError
+                                   ? fmt::format(" ({})", Pa_GetLastHostErrorInfo()->errorText)
+                                   : "";
     if (stream_ != nullptr) Pa_CloseStream(stream_);
     throw DeviceError(fmt::format(
         "\"{}\" cannot be opened for playing and recording together at {:g} Hz: {}{}; try another "
         "--rate, and close other programs that hold the device",
-        device.name, rate, Pa_GetErrorText(error), detail));
+        device_.name, rate, Pa_GetErrorText(error), detail));
   }
-  const PaStreamInfo* stream = Pa_GetStreamInfo(stream_);
-  info_.name = fmt::format("{} ({})", device.name, device.host_api);
-  info_.rate = Hertz(stream->sampleRate);
-  info_.live = true;
-  info_.has_reference = settings.reference_channel > 0;
-  info_.reported_latency = Seconds(stream->inputLatency + stream->outputLatency);
 }
 
-PortAudioPort::~PortAudioPort() {
+Stream::~Stream() {
   const os::QuietStderr quiet;
   Pa_StopStream(stream_);
   Pa_CloseStream(stream_);
 }
 
-int PortAudioPort::callback(const void* input, void* output, unsigned long frames,
-                            const PaStreamCallbackTimeInfo*, PaStreamCallbackFlags flags,
-                            void* self) noexcept {
-  static_cast<PortAudioPort*>(self)->serve(static_cast<const float* const*>(input),
-                                           static_cast<float* const*>(output), frames, flags);
+PortInfo Stream::info() const {
+  const PaStreamInfo* stream = Pa_GetStreamInfo(stream_);
+  PortInfo info;
+  info.name = fmt::format("{} ({})", device_.name, device_.host_api);
+  info.rate = Hertz(stream->sampleRate);
+  info.live = true;
+  info.has_reference = settings_.reference_channel > 0;
+  info.buffer_frames = buffer_.load();
+  // PortAudio on JACK has been seen to claim 2^33 frames: then the latency is unknown.
+  const Seconds claimed(stream->inputLatency + stream->outputLatency);
+  if (claimed >= Seconds(0.0) && claimed < kLongestLatency) info.reported_latency = claimed;
+  return info;
+}
+
+int Stream::callback(const void* input, void* output, unsigned long frames,
+                     const PaStreamCallbackTimeInfo*, PaStreamCallbackFlags flags,
+                     void* self) noexcept {
+  static_cast<Stream*>(self)->serve(static_cast<const float* const*>(input),
+                                    static_cast<float* const*>(output), frames, flags);
   return paContinue;
 }
 
-void PortAudioPort::serve(const float* const* in, float* const* out, unsigned long frames,
-                          PaStreamCallbackFlags flags) noexcept {
-  callbacks_.fetch_add(1, std::memory_order_relaxed);
+void Stream::serve(const float* const* in, float* const* out, unsigned long frames,
+                   PaStreamCallbackFlags flags) noexcept {
+  buffer_.store(frames, std::memory_order_relaxed);
   for (int c = 0; c < outputs_; ++c) std::fill_n(out[c], frames, 0.0f);
   serving_.store(true);
   if (Player* player = player_.load(); player != nullptr) {
+    // Not paPrimingOutput: that marks buffers asked for in advance, not lost ones.
     constexpr PaStreamCallbackFlags kLost =
         paInputUnderflow | paInputOverflow | paOutputUnderflow | paOutputOverflow;
     if ((flags & kLost) != 0 || in == nullptr) player->count_dropout();
@@ -195,42 +246,83 @@ void PortAudioPort::serve(const float* const* in, float* const* out, unsigned lo
     }
   }
   serving_.store(false);
+  frames_.fetch_add(frames, std::memory_order_relaxed);
 }
 
-void PortAudioPort::wait_while(Player& player) {
-  using Clock = std::chrono::steady_clock;
-  constexpr auto kSilentDevice = std::chrono::seconds(3);
-  constexpr long kPollMilliseconds = 5;
-  unsigned long seen = callbacks_.load();
-  auto last_call = Clock::now();
+bool Stream::runs_for(std::size_t frames) const {
+  const std::size_t from = frames_.load();
+  Growth growth;
+  while (frames_.load() - from < frames) {
+    Pa_Sleep(kPollMilliseconds);
+    if (growth.stopped(frames_.load())) return false;
+  }
+  return true;
+}
+
+bool Stream::wait_for_end(Player& player) const {
+  // A slow start and a busy machine are allowed for; half the speed is not a sound device.
+  const double take_s =
+      static_cast<double>(player.length()) / Pa_GetStreamInfo(stream_)->sampleRate;
+  const auto deadline = Clock::now() + kStalled + std::chrono::duration<double>(2.0 * take_s);
+  Growth growth;
   while (player_.load() != nullptr) {
     if (os::interrupted()) player.mute();
     Pa_Sleep(kPollMilliseconds);
-    const unsigned long now = callbacks_.load();
-    if (now != seen) {
-      seen = now;
-      last_call = Clock::now();
-    }
-    if (Pa_IsStreamActive(stream_) != 1 || Clock::now() - last_call > kSilentDevice) {
-      player_.store(nullptr);
-      throw DeviceError(
-          fmt::format("{}: the device stopped in mid-take. Check its cable and power and the audio "
-                      "server, then go "
-                      "on with --resume.",
-                      info_.name));
+    if (player_.load() == nullptr) break;
+    if (Pa_IsStreamActive(stream_) != 1 || growth.stopped(player.recorded()) ||
+        Clock::now() > deadline) {
+      return false;
     }
   }
+  return true;
+}
+
+bool Stream::play(Player& player) {
+  player_.store(&player);
+  const bool ended = wait_for_end(player);
+  player_.store(nullptr);
+  while (serving_.load()) Pa_Sleep(1);
+  return ended;
+}
+
+class PortAudioPort : public Port {
+ public:
+  explicit PortAudioPort(const LiveSettings& settings);
+  ~PortAudioPort() override;
+  const PortInfo& info() const override { return info_; }
+  void play(Player& player, int take) override;
+
+ private:
+  [[noreturn]] void lose(const std::string& what);
+
+  std::unique_ptr<Stream> stream_;
+  PortInfo info_;
+};
+
+PortAudioPort::PortAudioPort(const LiveSettings& settings)
+    : stream_(std::make_unique<Stream>(settings)), info_(stream_->info()) {
+  if (!stream_->runs_for(samples_in(kWarmUp, info_.rate))) lose("the device does not start");
+  info_ = stream_->info();
+}
+
+PortAudioPort::~PortAudioPort() {
+  // Here too the device may be gone; then nothing of it can be closed (see below).
+  if (stream_ && !stream_->runs_for(1)) stream_.release();
+}
+
+// PortAudio closes a stream, and itself, only after one more callback; on JACK it waits minutes for
+// that when the server is gone. So a lost stream is left behind with all that its callback touches:
+// should the device call again, it is answered with silence.
+void PortAudioPort::lose(const std::string& what) {
+  stream_.release();
+  throw DeviceError(fmt::format(
+      "{}: {}. Check its cable and power and the audio server, then go on with --resume.",
+      info_.name, what));
 }
 
 void PortAudioPort::play(Player& player, int) {
-  player_.store(&player);
-  try {
-    wait_while(player);
-  } catch (...) {
-    while (serving_.load()) Pa_Sleep(1);
-    throw;
-  }
-  while (serving_.load()) Pa_Sleep(1);
+  if (!stream_) lose("the device was lost in an earlier take");
+  if (!stream_->play(player)) lose("the device stopped in mid-take");
 }
 
 }  // namespace

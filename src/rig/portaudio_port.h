@@ -27,8 +27,10 @@ struct LiveSettings {
   Hertz rate{0.0};                           ///< 0: the device's default rate; 8 kHz .. 192 kHz
 };
 
-/// Throws DeviceError: no such device, several match, too few channels, rate refused; names what is
-/// there.
+/// Opens the device and runs it, silent between takes, until the port goes. Throws UsageError when
+/// reference and return are one input; DeviceError: no such device, several match, too few
+/// channels, rate refused (names what is there), or no callback within 5 s. Port::play throws
+/// DeviceError when the device stops or stalls for 5 s; the port is then lost for good.
 std::unique_ptr<Port> make_portaudio_port(const LiveSettings& settings);
 
 }  // namespace kneeprint

@@ -4,199 +4,197 @@
 #include <fmt/format.h>
 
 #include <algorithm>
-#include <array>
 #include <cmath>
-#include <complex>
-#include <numbers>
+#include <stdexcept>
 
 #include "quantity/failure.h"
-#include "signal/delay.h"
+#include "rig/marker.h"
+#include "rig/plan_code.h"
 #include "signal/resample.h"
 
 namespace kneeprint {
 namespace {
 
-constexpr Seconds kSilence{0.5}, kMarker{0.25}, kGap{0.3}, kBurst{0.04}, kEdge{0.005};
-constexpr double kMarkerLow = 300.0, kMarkerHigh = 6000.0;
-constexpr int kDigits = 8;  // hexadecimal
-// A chirp through a saturator and filters still matches above 0.5; a stretch of noise or of another
-// signal stays far below.
-constexpr double kLeastMatch = 0.4;
+constexpr Seconds kSilence{0.5}, kGap{0.3};
 constexpr double kLargestOffset = 1000e-6;
 
-// Frequency of a hexadecimal digit: 100 Hz apart, so a 40 ms burst tells neighbours apart cleanly,
-// and below their own second harmonics.
-double digit_frequency(int digit) { return 1600.0 + 100.0 * digit; }
+// The markers of one reel in one recording.
+class Search {
+ public:
+  Search(const Waveform& recording, const ReelLayout& layout, const std::string& file)
+      : recording_(recording),
+        layout_(layout),
+        file_(file),
+        rising_(Sweep::rising, layout.rate),
+        falling_(Sweep::falling, layout.rate),
+        nominal_(recording.rate / layout.rate),
+        apart_(static_cast<double>(layout.end_marker - layout.start_marker)) {}
 
-double gate(double t, double length) {
-  const double edge = std::min(t, length - t) / kEdge.value();
-  if (edge <= 0.0) return 0.0;
-  return edge >= 1.0 ? 1.0 : 0.5 - 0.5 * std::cos(std::numbers::pi * edge);
-}
-
-// The marker at time t from its start: a linear chirp, so that its spectrum is flat over its band.
-double marker_at(double t) {
-  const double length = kMarker.value();
-  if (t < 0.0 || t > length) return 0.0;
-  const double sweep = (kMarkerHigh - kMarkerLow) / length;
-  return gate(t, length) *
-         std::sin(2.0 * std::numbers::pi * (kMarkerLow * t + 0.5 * sweep * t * t));
-}
-
-std::vector<double> marker(double samples_per_second) {
-  std::vector<double> x(static_cast<std::size_t>(kMarker.value() * samples_per_second));
-  for (std::size_t n = 0; n < x.size(); ++n)
-    x[n] = marker_at(static_cast<double>(n) / samples_per_second);
-  return x;
-}
-
-int digit_of(std::uint32_t code, int place) { return static_cast<int>(code >> (4 * place) & 0xF); }
-
-struct Found {
-  double at = 0.0;
-  double match = 0.0;
-  double gain = 0.0;
-};
-
-// The strongest likeness of the marker in [from, to) of the recording, searched in pieces so that
-// an hour of recording costs no more memory than a minute.
-Found search(const std::vector<double>& x, const std::vector<double>& known, long from, long to,
-             bool earliest) {
-  constexpr long kPiece = 1 << 19;
-  Found best;
-  from = std::max(0L, from);
-  to = std::min(to, static_cast<long>(x.size()) - static_cast<long>(known.size()));
-  for (long start = from; start < to; start += kPiece) {
-    const long last = std::min(kPiece, to - start);
-    const auto length = std::min(x.size() - static_cast<std::size_t>(start),
-                                 static_cast<std::size_t>(last) + known.size());
-    const Delay d = find_delay(known, std::span(x).subspan(static_cast<std::size_t>(start), length),
-                               0, last - 1);
-    if (d.match > best.match) best = {static_cast<double>(start) + d.samples, d.match, d.gain};
-    // A programme may hold likenesses further on; the first clear one is the start marker.
-    if (earliest && best.match > kLeastMatch) break;
-  }
-  return best;
-}
-
-std::uint32_t read_code(const Waveform& recording, const ReelLayout& layout,
-                        const ReelFound& found) {
-  std::uint32_t code = 0;
-  const double rate = layout.rate.value();
-  const auto burst = samples_in(kBurst, layout.rate);
-  for (int place = 0; place < kDigits; ++place) {
-    const double start =
-        found.start +
-        found.step * static_cast<double>(layout.code + burst * static_cast<std::size_t>(place));
-    const std::vector<double> x = read_at(recording.samples, start, found.step, burst);
-    int loudest = 0;
-    double most = -1.0;
-    for (int digit = 0; digit < 16; ++digit) {
-      std::complex<double> sum = 0.0;
-      for (std::size_t n = 0; n < x.size(); ++n) {
-        sum += x[n] * std::polar(1.0, -2.0 * std::numbers::pi * digit_frequency(digit) *
-                                          static_cast<double>(n) / rate);
-      }
-      if (std::abs(sum) > most) {
-        most = std::abs(sum);
-        loudest = digit;
-      }
+  ReelFound run(std::optional<std::uint32_t> expected_code) {
+    if (recording_.rate < 2.2 * rising_.highest()) {
+      refuse(fmt::format(
+          "its sample rate, {:g} Hz, cannot hold this reel's markers of up to {:g} Hz; record at "
+          "44100 Hz or more",
+          recording_.rate.value(), rising_.highest().value()));
     }
-    code |= static_cast<std::uint32_t>(loudest) << (4 * place);
+    find_start();
+    ReelFound found;
+    place(found, nominal_);
+    found.code = code(found);
+    if (expected_code) check_code(found, *expected_code, file_);
+    find_end();
+    refine();
+    place(found, (last_.start - first_.start) / apart_);
+    found.clock_ppm = 1e6 * (found.step / nominal_ - 1.0);
+    found.polarity = first_.gain < 0.0 ? -1 : 1;
+    found.match = std::min(first_.match, last_.match);
+    if (std::abs(found.clock_ppm) > 1e6 * kLargestOffset) refuse_distance();
+    return found;
   }
-  return code;
-}
+
+ private:
+  [[noreturn]] void refuse(const std::string& sentence) const {
+    throw InputError(file_ + ": " + sentence);
+  }
+  [[noreturn]] void refuse_distance() const {
+    const double real = (last_.start - first_.start) / recording_.rate.value();
+    const double wanted = apart_ / layout_.rate.value();
+    refuse(fmt::format(
+        "its markers stand {:.3f} s apart, this reel's {:.3f} s ({:+.2f} %): it was edited, ran "
+        "at another speed, or is the recording of another plan's reel; record the reel again in "
+        "one piece",
+        real, wanted, 100.0 * (real / wanted - 1.0)));
+  }
+
+  long size() const { return static_cast<long>(recording_.samples.size()); }
+  double seconds(double samples) const { return samples / recording_.rate.value(); }
+
+  MarkerFound find(const Marker& marker, double step, double from, double to) const {
+    return find_marker(marker, recording_.samples, step * layout_.rate, std::lround(from),
+                       std::lround(to));
+  }
+
+  void place(ReelFound& found, double step) const {
+    found.step = step;
+    found.start = first_.start - step * static_cast<double>(layout_.start_marker);
+  }
+
+  void find_start() {
+    first_ = find(rising_, nominal_, 0.0, static_cast<double>(size()));
+    if (!first_.clear()) {
+      refuse(fmt::format(
+          "no start marker found (best likeness {:.2f}). Is this the recording of a reel, from "
+          "before its first chirp on, and the right channel (--channel)?",
+          first_.match));
+    }
+  }
+
+  std::uint32_t code(const ReelFound& found) const {
+    const std::vector<double> heard =
+        read_at(recording_.samples, found.start + found.step * static_cast<double>(layout_.code),
+                found.step, plan_code_length(layout_.rate));
+    const std::optional<std::uint32_t> code = read_plan_code(heard, layout_.rate);
+    if (!code) {
+      refuse(fmt::format(
+          "the start marker stands at {:.2f} s, but the plan's code after it cannot be read; "
+          "record the reel again, with less noise and without gates or echo",
+          seconds(first_.start)));
+    }
+    return *code;
+  }
+
+  void find_end() {
+    const double expected = first_.start + nominal_ * apart_;
+    // A falling sweep at a wrong speed is found up to a millisecond off.
+    const double room = nominal_ * apart_ * kLargestOffset + 0.001 * recording_.rate.value();
+    last_ = find(falling_, nominal_, expected - room, expected + room + 1.0);
+    if (last_.clear()) return;
+    last_ = find(falling_, nominal_, first_.start, static_cast<double>(size()));
+    if (last_.clear()) refuse_distance();
+    const double needed = expected + cycles(recording_.rate, Marker::kLength);
+    const double missing = needed - static_cast<double>(size());
+    if (missing > 0.0) {
+      refuse(fmt::format(
+          "the recording stops at {:.2f} s, {:.2f} s before the end of the reel's end marker; "
+          "record all of it",
+          seconds(static_cast<double>(size())), seconds(missing)));
+    }
+    refuse(fmt::format(
+        "no end marker found; this reel has it {:.2f} s after the start marker, at {:.2f} s. Was "
+        "the recording interrupted or edited? Record the reel again in one piece",
+        seconds(nominal_ * apart_), seconds(expected)));
+  }
+
+  // A marker that runs at another speed is found late or early, as a sweep trades time for
+  // frequency. Seen again at the speed just found, that error shrinks each time by the ratio of
+  // reel to marker, at least 3.
+  void refine() {
+    constexpr int kPasses = 4;
+    const double near = 0.001 * recording_.rate.value();
+    for (int pass = 0; pass < kPasses; ++pass) {
+      const double step = (last_.start - first_.start) / apart_;
+      first_ = find(rising_, step, first_.start - near, first_.start + near);
+      last_ = find(falling_, step, last_.start - near, last_.start + near);
+    }
+  }
+
+  const Waveform& recording_;
+  const ReelLayout& layout_;
+  const std::string& file_;
+  Marker rising_, falling_;
+  double nominal_;  ///< samples of the recording per sample of the reel, by their nominal rates
+  double apart_;    ///< samples of the reel from marker to marker
+  MarkerFound first_, last_;
+};
 
 }  // namespace
 
 ReelLayout lay_out(std::span<const std::size_t> stimulus_lengths, Hertz rate) {
   ReelLayout layout;
   layout.rate = rate;
-  const std::size_t gap = samples_in(kGap, rate), mark = samples_in(kMarker, rate);
+  const std::size_t gap = samples_in(kGap, rate), marker = samples_in(Marker::kLength, rate);
   layout.start_marker = samples_in(kSilence, rate);
-  layout.code = layout.start_marker + mark + gap;
-  std::size_t at = layout.code + kDigits * samples_in(kBurst, rate) + gap;
+  layout.code = layout.start_marker + marker + gap;
+  std::size_t at = layout.code + plan_code_length(rate) + gap;
   for (const std::size_t length : stimulus_lengths) {
     layout.slots.push_back({at, length});
     at += length + gap;
   }
   layout.end_marker = at;
-  layout.length = at + mark + samples_in(kSilence, rate);
+  layout.length = at + marker + samples_in(kSilence, rate);
   return layout;
 }
 
 Waveform assemble(const ReelLayout& layout, const std::vector<Waveform>& stimuli,
                   std::uint32_t code, LevelDbfs level) {
+  if (stimuli.size() != layout.slots.size()) throw std::invalid_argument("one stimulus per slot");
   Waveform reel{layout.rate, std::vector<double>(layout.length, 0.0)};
-  const double peak = sine_peak(level), rate = layout.rate.value();
-  const std::size_t mark = samples_in(kMarker, layout.rate);
-  for (std::size_t n = 0; n < mark; ++n) {
-    const double x = peak * marker_at(static_cast<double>(n) / rate);
-    reel.samples[layout.start_marker + n] = x;
-    reel.samples[layout.end_marker + n] = x;
-  }
-  const std::size_t burst = samples_in(kBurst, layout.rate);
-  for (int place = 0; place < kDigits; ++place) {
-    const double f = digit_frequency(digit_of(code, place));
-    for (std::size_t n = 0; n < burst; ++n) {
-      const double t = static_cast<double>(n) / rate;
-      reel.samples[layout.code + burst * static_cast<std::size_t>(place) + n] =
-          peak * gate(t, kBurst.value()) * std::sin(2.0 * std::numbers::pi * f * t);
-    }
-  }
+  const auto put = [&](const std::vector<double>& x, std::size_t start, double gain) {
+    for (std::size_t n = 0; n < x.size(); ++n) reel.samples[start + n] = gain * x[n];
+  };
+  const double peak = sine_peak(level);
+  put(Marker(Sweep::rising, layout.rate).samples(layout.rate), layout.start_marker, peak);
+  put(Marker(Sweep::falling, layout.rate).samples(layout.rate), layout.end_marker, peak);
+  put(plan_code_sound(code, layout.rate), layout.code, peak);
   for (std::size_t i = 0; i < stimuli.size(); ++i) {
-    std::copy(stimuli[i].samples.begin(), stimuli[i].samples.end(),
-              reel.samples.begin() + static_cast<long>(layout.slots[i].start));
+    if (stimuli[i].samples.size() != layout.slots[i].length || stimuli[i].rate != layout.rate) {
+      throw std::invalid_argument("a stimulus must have its slot's length and the reel's rate");
+    }
+    put(stimuli[i].samples, layout.slots[i].start, 1.0);
   }
   return reel;
 }
 
-ReelFound find_reel(const Waveform& recording, const ReelLayout& layout, const std::string& file) {
-  const double nominal = recording.rate / layout.rate;
-  const std::vector<double> known = marker(recording.rate.value());
-  const Found first =
-      search(recording.samples, known, 0, static_cast<long>(recording.samples.size()), true);
-  if (first.match < kLeastMatch) {
-    throw InputError(fmt::format(
-        "{}: no start marker found (best likeness {:.2f}, at least {:.2f} expected). Is this the "
-        "recording of a reel, from before its first chirp on, and the right channel (--channel)?",
-        file, first.match, kLeastMatch));
-  }
-  const double apart = nominal * static_cast<double>(layout.end_marker - layout.start_marker);
-  const auto expected = static_cast<long>(std::lround(first.at + apart));
-  const auto room = static_cast<long>(std::ceil(apart * kLargestOffset)) + 64;
-  const Found last = search(recording.samples, known, expected - room, expected + room + 1, false);
-  if (last.match < kLeastMatch) {
-    const double missing = (static_cast<double>(expected) + static_cast<double>(known.size()) -
-                            static_cast<double>(recording.samples.size())) /
-                           recording.rate.value();
-    if (missing > 0.0) {
-      throw InputError(fmt::format(
-          "{}: the recording ends {:.1f} s before the reel's end marker; record all of it", file,
-          missing));
-    }
-    throw InputError(
-        fmt::format("{}: no end marker where this reel has it, {:.2f} s after the start marker. It "
-                    "is the recording "
-                    "of another plan's reel, was edited, or ran at a speed off by more than 0.1 %",
-                    file, apart / recording.rate.value()));
-  }
-  ReelFound found;
-  const double measured = last.at - first.at;
-  found.step = measured / static_cast<double>(layout.end_marker - layout.start_marker);
-  found.start = first.at - found.step * static_cast<double>(layout.start_marker);
-  found.clock_ppm = 1e6 * (found.step / nominal - 1.0);
-  found.polarity = first.gain < 0.0 ? -1 : 1;
-  found.code = read_code(recording, layout, found);
-  return found;
+ReelFound find_reel(const Waveform& recording, const ReelLayout& layout, const std::string& file,
+                    std::optional<std::uint32_t> expected_code) {
+  return Search(recording, layout, file).run(expected_code);
 }
 
 void check_code(const ReelFound& found, std::uint32_t expected, const std::string& file) {
   if (found.code == expected) return;
   throw InputError(
       fmt::format("{}: this is the recording of another plan's reel (its code is {:08x}, this "
-                  "folder's plan has "
-                  "{:08x}); ingest it into the folder whose reel was played",
+                  "folder's plan has {:08x}); ingest it into the folder whose reel was played",
                   file, found.code, expected));
 }
 

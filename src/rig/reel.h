@@ -3,12 +3,13 @@
 //
 //   silence  marker  code  stimulus  gap  stimulus  ...  marker  silence
 //
-// The marker is a chirp; its two places give where the reel starts in the recording and how fast
-// the recorder's clock ran. The code is 32 bits of the plan's checksum, as eight tone bursts of one
-// of 16 frequencies each, which survives saturation, inversion and filters.
+// The markers are chirps, one rising and one falling; their two places give where the reel starts
+// in the recording and how fast the recorder's clock ran. The code is 32 bits of the plan's
+// checksum.
 #pragma once
 
 #include <cstdint>
+#include <optional>
 #include <span>
 #include <string>
 #include <vector>
@@ -24,16 +25,16 @@ struct ReelSlot {
 
 struct ReelLayout {
   Hertz rate{48000.0};
-  std::size_t start_marker = 0, end_marker = 0, code = 0;
+  std::size_t start_marker = 0, code = 0, end_marker = 0;  ///< first sample of each
   std::vector<ReelSlot> slots;
   std::size_t length = 0;
 };
 
-/// Where everything stands for stimuli of these lengths.
+/// Where everything stands for stimuli of these lengths. `rate`: 8 kHz and more.
 ReelLayout lay_out(std::span<const std::size_t> stimulus_lengths, Hertz rate);
 
 /// The reel's samples. Markers and code play at `level`. One stimulus per slot, of the slot's
-/// length.
+/// length; else std::invalid_argument (a programming error).
 Waveform assemble(const ReelLayout& layout, const std::vector<Waveform>& stimuli,
                   std::uint32_t code, LevelDbfs level);
 
@@ -41,20 +42,25 @@ struct ReelFound {
   double start = 0.0;      ///< sample of the recording at which the reel's sample 0 stands
   double step = 1.0;       ///< samples of the recording per sample of the reel
   double clock_ppm = 0.0;  ///< recorder against reel, beyond the nominal ratio of their rates
-  int polarity = 1;
+  int polarity = 1;        ///< -1 when the markers came back inverted
+  double match = 0.0;      ///< likeness of the poorer marker, 0 .. 1
   std::uint32_t code = 0;
 };
 
-/// Finds the markers and reads the code. `recording`: any sample rate, silence and noise at either
-/// end, any delay and gain, either polarity, a clock off by up to 1000 ppm. Throws InputError,
-/// naming `file`: no start marker, no end marker, or markers too far apart or too close for this
-/// reel.
-ReelFound find_reel(const Waveform& recording, const ReelLayout& layout, const std::string& file);
+/// Finds the markers and reads the code. `recording`: any sample rate that holds the markers,
+/// silence and noise at either end, any delay and gain, either polarity, a clock off by up to 1000
+/// ppm. Clean recordings give `start` to 0.02 sample and the length of the reel to 0.02 sample.
+/// Throws InputError, naming `file`: sample rate too low, no start marker, code unreadable or
+/// (where `expected_code` is given) of another plan, no end marker, recording ends too early,
+/// markers too far apart or too close for this reel.
+ReelFound find_reel(const Waveform& recording, const ReelLayout& layout, const std::string& file,
+                    std::optional<std::uint32_t> expected_code = {});
 
 /// Throws InputError when the codes differ: the recording is of another plan's reel.
 void check_code(const ReelFound& found, std::uint32_t expected, const std::string& file);
 
 /// The response in one slot, in the reel's own time: aligned sample for sample with its stimulus.
+/// What the recording no longer holds reads as silence.
 Waveform cut(const Waveform& recording, const ReelFound& found, const ReelLayout& layout,
              const ReelSlot& slot);
 

@@ -5,6 +5,8 @@
 
 #include <array>
 #include <nlohmann/json.hpp>
+#include <regex>
+#include <set>
 #include <utility>
 
 #include "platform/json_fields.h"
@@ -28,11 +30,39 @@ const char* kind_name(RigKind kind) {
   return "";
 }
 
+// To 12 digits (1e-11 dB): the way through decibels and back must not turn 1.23 V into
+// 1.2300000000000002 V.
+double tidy(double value) { return std::stod(fmt::format("{:.12g}", value)); }
+
+// YYYY-MM-DD, from 1970 on; that the month has such a day is not checked.
+bool is_date(const std::string& text) {
+  static const std::regex kDate(
+      "(19[7-9]|2[0-9]{2})[0-9]-(0[1-9]|1[0-2])-(0[1-9]|[12][0-9]|3[01])");
+  return std::regex_match(text, kDate);
+}
+
+RigFloor read_floor(const JsonFields& f) {
+  std::vector<FloorPoint> points;
+  std::set<std::pair<int, double>> seen;
+  for (const JsonFields& p : f.objects("floor")) {
+    p.allow_only({"level_dbfs", "order", "relative_db"});
+    points.push_back({LevelDbfs(p.number("level_dbfs", {-140.0, 0.0})), p.integer("order", 2, 20),
+                      Decibels(p.number("relative_db", {-400.0, 0.0}))});
+    if (!seen.insert({points.back().order, points.back().level.value()}).second) {
+      p.refuse("level_dbfs",
+               fmt::format("found {:g} a second time for order {}; expected one entry "
+                           "for each level and order",
+                           points.back().level.value(), points.back().order));
+    }
+  }
+  return RigFloor(std::move(points));
+}
+
 nlohmann::ordered_json direction_json(int channel, const LevelScale& scale, bool dc_coupled) {
   nlohmann::ordered_json j;
   j["channel"] = channel;
   if (scale.is_calibrated()) {
-    j["full_scale_v_rms"] = to_volts(LevelDbu(scale.offset_db)).value();
+    j["full_scale_v_rms"] = tidy(to_volts(LevelDbu(scale.offset_db)).value());
     j["full_scale_u_db"] = scale.standard_uncertainty.value();
   }
   j["dc_coupled"] = dc_coupled;
@@ -108,6 +138,9 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
     if (kind == text) rig.kind = k;
   }
   if (rig.kind == RigKind::live || f.has("device")) rig.device = f.text("device");
+  if (rig.kind == RigKind::live && rig.device.empty()) {
+    f.refuse("device", "found \"\"; expected the device's index, or text that stands in its name");
+  }
   rig.rate = Hertz(f.number("rate_hz", {8000.0, 192000.0}));
   if (f.has("recorded_rate_hz")) {
     rig.recorded_rate = Hertz(f.number("recorded_rate_hz", {4000.0, 1e6}));
@@ -128,6 +161,10 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
     r.allow_only({"channel", "tap"});
     rig.reference_channel = r.integer("channel", 1, 256);
     rig.reference_tap = r.choice("tap", "tap", kTaps);
+    if (*rig.reference_channel == rig.return_channel) {
+      r.refuse("channel", fmt::format("found {}, the return's own; expected another input",
+                                      rig.return_channel));
+    }
   }
   if (f.has("wiring")) rig.wiring = f.choice("wiring", "wiring", kWirings);
   if (f.has("source_impedance_ohm")) {
@@ -137,17 +174,15 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
     rig.load_impedance = Ohms(f.number("load_impedance_ohm", {0.1, 1e12}));
   }
   if (f.has("ceiling_dbfs")) rig.ceiling_dbfs = f.number("ceiling_dbfs", {-140.0, 0.0});
-  if (f.has("calibrated_on")) rig.calibrated_on = f.text("calibrated_on");
-  if (f.has("invented")) rig.invented = f.boolean("invented");
-  if (f.has("floor")) {
-    std::vector<FloorPoint> points;
-    for (const JsonFields& p : f.objects("floor")) {
-      p.allow_only({"level_dbfs", "order", "relative_db"});
-      points.push_back({LevelDbfs(p.number("level_dbfs", {-140.0, 0.0})), p.integer("order", 2, 20),
-                        Decibels(p.number("relative_db", {-400.0, 0.0}))});
+  if (f.has("calibrated_on")) {
+    rig.calibrated_on = f.text("calibrated_on");
+    if (!is_date(rig.calibrated_on)) {
+      f.refuse("calibrated_on",
+               fmt::format("found \"{}\"; expected a date as YYYY-MM-DD", rig.calibrated_on));
     }
-    rig.floor = RigFloor(std::move(points));
   }
+  if (f.has("invented")) rig.invented = f.boolean("invented");
+  if (f.has("floor")) rig.floor = read_floor(f);
   return rig;
 }
 

@@ -27,7 +27,7 @@ struct Rig {
   LevelScale return_scale;
   bool dc_coupled_send = false;
   bool dc_coupled_return = false;  ///< false: dc stays empty
-  std::string wiring;              ///< "balanced", "pin 3 grounded", "pin 3 open"
+  std::string wiring;              ///< "balanced", "pin 3 grounded", "pin 3 open", "unbalanced"
   std::optional<Ohms> source_impedance;
   std::optional<Ohms> load_impedance;
   std::optional<double> ceiling_dbfs;  ///< the guard's, when the rig file names one

@@ -328,6 +328,7 @@ ClimbEnd Climb::run() {
         verdicts.push_back(take(
             specs[i], take_number(request_.plan, static_cast<int>(rung), static_cast<int>(i))));
       }
+      if (rung + 1 == ladder_.rungs.size()) break;  // the top: nothing is left to stop
       if (auto end = plan_says_stop(verdicts, rung)) return finish(*end);
     }
   } catch (const GuardStop& stop) {

@@ -25,9 +25,13 @@ double input_peak(const RigView& view, double drive) { return view.send.peak_of_
 
 double relative(Decibels u) { return u.value() * std::log(10.0) / 20.0; }
 
-FitDatum datum_of(const HarmonicPoint& p, double input) {
+FitDatum datum_of(const HarmonicPoint& p, double input, double fundamental) {
   const double magnitude = std::hypot(p.in_phase, p.quadrature);
-  FitDatum d{input, p.order, p.in_phase, p.component_u, true};
+  FitDatum d{input, p.order, p.in_phase, p.component_u, true, 0.0};
+  // The rig floor of an order keeps its phase from drive to drive, whatever that is.
+  if (p.floor_db) {
+    d.common_u = fundamental * std::pow(10.0, *p.floor_db / 20.0) / std::numbers::sqrt2;
+  }
   if (magnitude < kClearOfNoise * p.component_u) return d;
   const double off_axis =
       std::atan2(std::abs(p.quadrature), std::abs(p.in_phase)) * 180.0 / std::numbers::pi;
@@ -79,11 +83,13 @@ std::vector<FitDatum> fit_data(const Curves& curves, const Plan& plan, const Rig
   const RigView view = view_of(rig);
   const double wanted = fit_frequency(plan);
   std::vector<FitDatum> data;
+  double fundamental = 0.0;  // orders follow their fundamental in the table
   for (const HarmonicPoint& p : curves.harmonics) {
     // Played frequencies are within 0.1 % of those asked for.
     if (std::abs(p.frequency_hz - wanted) > 0.0011 * wanted) continue;
+    if (p.order == 1) fundamental = std::hypot(p.in_phase, p.quadrature);
     if (!fits(p.flag) || !p.level || p.component_u <= 0.0) continue;
-    data.push_back(datum_of(p, input_peak(view, p.drive)));
+    data.push_back(datum_of(p, input_peak(view, p.drive), fundamental));
   }
   return data;
 }

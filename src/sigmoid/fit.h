@@ -24,13 +24,16 @@ struct FitDatum {
   int order = 1;            ///< 0 for the offset, where the return passes DC
   double value = 0.0;       ///< signed peak when `has_sign`, else magnitude
   double u = 0.0;           ///< standard uncertainty, > 0
-  bool has_sign =
-      true;  ///< phase within 20 degrees of the axis, or the datum is an in-phase part under noise
+  /// Phase within 20 degrees of the axis, or the datum is an in-phase part under noise.
+  bool has_sign = true;
+  /// The part of u that every drive of this order has in common: the rig's own harmonic, of known size
+  /// and unknown phase. It does not average out over the drives.
+  double common_u = 0.0;
 };
 
 struct FitOptions {
-  double send_relative_u =
-      0.0;  ///< standard uncertainty of x's scale, relative (type B, all drives alike)
+  /// Standard uncertainty of x's scale, relative (type B, all drives alike).
+  double send_relative_u = 0.0;
   double return_relative_u = 0.0;  ///< of y's scale
 };
 
@@ -48,8 +51,8 @@ struct FittedFamily {
   int data = 0, parameters = 0;
   double discrepancy = 0.0;  ///< standard deviation of what the family cannot reach, relative to H1
   double aicc = 0.0;         ///< -2 ln L (with the discrepancy in L) + 2k + 2k(k+1)/(n-k-1)
-  double reach =
-      0.0;  ///< half the fitted curve's swing at the strongest input over the limit, 0 .. 1
+  /// Half the fitted curve's swing at the strongest input over the limit, 0 .. 1.
+  double reach = 0.0;
   bool extrapolated = false;  ///< reach < 0.8: the limit was never approached
   bool converged = false;     ///< and not at the end of the range searched for drive or bias
 

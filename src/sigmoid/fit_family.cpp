@@ -132,6 +132,39 @@ FittedParameter positive(double value, double log_u) {
   return {value, value * log_u, value / factor, value * factor};
 }
 
+// What all drives of an order have in common shifts the parameters together: by C J^T f, with f the
+// shift of every residual, for each order on its own (fully correlated inputs, JCGM 100:2008 5.2.2
+// note 1). Added to the covariance C in place.
+void add_common_part(std::vector<double>& covariance, const HarmonicData& data, double discrepancy,
+                     const LeastSquaresProblem& problem, const std::vector<double>& x) {
+  const auto rows = static_cast<std::size_t>(problem.residuals);
+  const std::size_t width = x.size();
+  std::vector<double> r(rows), jacobian(rows * width);
+  problem.evaluate(x, r, jacobian);
+  std::vector<std::vector<double>> gradient(static_cast<std::size_t>(data.orders()) + 1,
+                                            std::vector<double>(width, 0.0));
+  std::size_t row = 0;
+  for (const HarmonicData::Rung& rung : data.rungs()) {
+    for (const FitDatum& d : rung.data) {
+      const double shift = d.common_u / std::hypot(d.u, discrepancy * rung.fundamental);
+      for (std::size_t j = 0; j < width; ++j) {
+        gradient[static_cast<std::size_t>(d.order)][j] += jacobian[row * width + j] * shift;
+      }
+      ++row;
+    }
+  }
+  const std::vector<double> statistical = covariance;
+  for (const std::vector<double>& g : gradient) {
+    std::vector<double> moved(width, 0.0);
+    for (std::size_t i = 0; i < width; ++i) {
+      for (std::size_t j = 0; j < width; ++j) moved[i] += statistical[i * width + j] * g[j];
+    }
+    for (std::size_t i = 0; i < width; ++i) {
+      for (std::size_t j = 0; j < width; ++j) covariance[i * width + j] += moved[i] * moved[j];
+    }
+  }
+}
+
 double reach_of(const SigmoidFamily& family, const SigmoidParameters& p, double input_peak) {
   const double swing = p.drive * input_peak;
   return 0.5 *
@@ -168,7 +201,9 @@ FittedFamily fit_family(const SigmoidFamily& family, const HarmonicData& data,
   problem.over_all(0.0).evaluate(all, r, {});
   for (const double one : r) f.chi_square += one * one;
 
-  const std::vector<double> covariance = inverse_fisher(problem.over_all(best.discrepancy), all);
+  const LeastSquaresProblem over_all = problem.over_all(best.discrepancy);
+  std::vector<double> covariance = inverse_fisher(over_all, all);
+  add_common_part(covariance, data, best.discrepancy, over_all, all);
   const auto u = [&](std::size_t j) { return std::sqrt(covariance[j * all.size() + j]); };
   f.limit = positive(p.limit, std::hypot(u(0), options.return_relative_u));
   f.drive = positive(p.drive, std::hypot(u(1), options.send_relative_u));

@@ -246,7 +246,7 @@ TEST_CASE("infinite degrees of freedom are read, other infinities are not") {
 
 TEST_CASE("an intermodulation row names its method and product") {
   const CurvesFolder folder{Curves{}};
-  CHECK(folder.refusal("intermod.csv", intermod_csv({}) + ",60,7000,0,dBu,m2,,,,,,,\n") ==
+  CHECK(folder.refusal("intermod.csv", intermod_csv({}) + ",60,7000,0,dBu,m2,,,,,,,,4,0\n") ==
         "row 2, column 1 \"method\": found \"\"; expected a name");
 }
 

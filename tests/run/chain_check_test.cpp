@@ -20,7 +20,7 @@ Waveform returned(const Waveform& sent, std::size_t delay, double gain, double n
   std::normal_distribution<double> n(0.0, 1.0);
   for (double& x : w.samples) x = noise * n(random);
   for (std::size_t i = 0; i < sent.samples.size(); ++i) {
-    w.samples[i + delay] += gain * std::tanh(20.0 * sent.samples[i]) / 20.0;
+    w.samples[i + delay] += gain * std::tanh(2.0 * sent.samples[i]) / 2.0;
   }
   return w;
 }

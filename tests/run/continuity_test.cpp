@@ -5,6 +5,7 @@
 
 #include <cmath>
 
+#include "method/steady.h"
 #include "method/synthetic.h"
 
 using namespace kneeprint;
@@ -82,10 +83,11 @@ TEST_CASE("different clocks show as a steady turn of phase") {
   const TakeSpec spec = spec_for("steady", 997.0, -12.0);
   const Stimulus s = find_method("steady")->stimulus(spec, Hertz(48000.0));
   Waveform drifting = s.wave;
+  const double played = steady_frequency(spec, Hertz(48000.0)).value();
   for (std::size_t n = 0; n < drifting.samples.size(); ++n) {
     const double t = static_cast<double>(n) - static_cast<double>(s.hold.first_block);
     drifting.samples[n] =
-        0.25 * std::cos(2.0 * std::numbers::pi * 998.0 * t / 48000.0 * (1.0 + 5e-6));
+        0.25 * std::cos(2.0 * std::numbers::pi * played * t / 48000.0 * (1.0 + 5e-6));
   }
   CHECK(check_continuity(drifting, s.hold).clock_ppm == doctest::Approx(5.0).epsilon(0.05));
   CHECK(std::abs(check_continuity(response(spec, gentle, 1e-5, 8), s.hold).clock_ppm) < 0.05);

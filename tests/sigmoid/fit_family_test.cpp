@@ -10,6 +10,7 @@
 #include <boost/math/distributions/chi_squared.hpp>
 #include <cmath>
 
+#include "sigmoid/predict.h"
 #include "sigmoid/synthetic_harmonics.h"
 
 using namespace kneeprint;
@@ -129,4 +130,39 @@ TEST_CASE("a family that reaches the data has no discrepancy") {
   const FittedFamily f = fit_family(family, HarmonicData(measured(family, {1, 2, 0.1, 1}, 4)), {});
   CHECK(f.discrepancy == 0.0);
   CHECK(f.parameters == 3);
+}
+
+TEST_CASE("what every drive has in common widens the intervals, and does not average out") {
+  using namespace kneeprint;
+  const SigmoidFamily& family = *find_family("tanh");
+  const SigmoidParameters truth{4.0, 0.4, 0.15, 1.0};
+  const auto curve = [&](double x) { return evaluate(family, truth, x); };
+  // The rig adds its own second harmonic, 1e-6 of the fundamental, at every drive.
+  constexpr double kFloor = 1e-6;
+  const auto fitted = [&](double stated) {
+    std::vector<FitDatum> data;
+    for (double amplitude = 0.1; amplitude < 8.0; amplitude *= 1.4) {
+      const std::vector<double> h = sine_harmonics(curve, amplitude, 6);
+      for (int n = 1; n <= 6; ++n) {
+        const double common = n > 1 ? stated * std::abs(h[1]) : 0.0;
+        FitDatum d{amplitude, n, h[static_cast<std::size_t>(n)], std::hypot(1e-8, common), true, common};
+        if (n == 2) d.value += kFloor * std::abs(h[1]);
+        data.push_back(d);
+      }
+    }
+    return fit_family(family, HarmonicData(data), {});
+  };
+  const FittedFamily told = fitted(kFloor);
+  CHECK(std::abs(told.bias.value - truth.bias) < 2.0 * told.bias.standard_error);
+  // Left to average out over the drives, the same floor would be far outside its own interval.
+  std::vector<FitDatum> untold;
+  for (double amplitude = 0.1; amplitude < 8.0; amplitude *= 1.4) {
+    const std::vector<double> h = sine_harmonics(curve, amplitude, 6);
+    for (int n = 1; n <= 6; ++n) {
+      const double u = std::hypot(1e-8, n > 1 ? kFloor * std::abs(h[1]) : 0.0);
+      untold.push_back({amplitude, n, h[static_cast<std::size_t>(n)], u, true, 0.0});
+    }
+  }
+  const FittedFamily averaged = fit_family(family, HarmonicData(untold), {});
+  CHECK(told.bias.standard_error > 1.5 * averaged.bias.standard_error);
 }
