@@ -23,7 +23,11 @@ std::string fit_text(const Model& model) {
   text += parameter_text("drive", best.drive, "1/" + model.axis_unit);
   text += parameter_text("bias", best.bias, "");
   if (best.sharpness) text += parameter_text("sharpness", *best.sharpness, "");
-  if (best.extrapolated) {
+  if (!best.describes()) {
+    text +=
+        "  no family describes this unit: the best one misses more than half of its distortion, so these "
+        "parameters say little about it\n";
+  } else if (best.extrapolated) {
     text += fmt::format(
         "  the limit is extrapolated: the output reached {:.0f} % of it; families not rejected put "
         "it "

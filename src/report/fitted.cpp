@@ -73,7 +73,7 @@ Table family_table(const Model& model) {
   Table t;
   t.caption =
       "Every family, fitted to the same harmonics. Lower AICc is better; within 2 of the best the "
-      "data do not decide. Discrepancy: what the family cannot reach, relative to the fundamental. "
+      "data do not decide. Discrepancy: what the family cannot reach, as a share of each drive's distortion. "
       "Chi-square counts measurement uncertainty alone.";
   t.heads = {"family",
              "AICc",
@@ -90,7 +90,7 @@ Table family_table(const Model& model) {
         {std::string(f.family->title), fixed_text(f.aicc, 1),
          fixed_text(f.aicc - fit.families[fit.best].aicc, 1),
          fmt::format("{} / {}", short_text(f.chi_square, 3), f.data),
-         f.discrepancy > 0.0 ? fixed_text(20.0 * std::log10(f.discrepancy), 0) + " dB" : "none",
+         f.discrepancy > 0.0 ? short_text(100.0 * f.discrepancy, 2) + " %" : "none",
          fixed_text(f.limit.value, decimals_for(0.5 * (f.limit.high95 - f.limit.low95))),
          h && h->compared > 0 ? fixed_text(h->rms_error_db, 2) + " dB" : kDash, verdict(fit, i)});
   }

@@ -65,10 +65,11 @@ Section notices_section(const ReportData& data) {
         "The unit bends differently at the frequencies measured, so one static curve cannot serve "
         "all of them: the two-tone prediction is shown, but it is not called a hold-out.");
   if (const FittedFamily* best = best_family(data)) {
-    if (!best->converged)
-      add("Fit not converged.",
-          "The parameters are where the search stopped; do not rely on them.");
-    if (best->extrapolated)
+    if (!best->describes())
+      add("No family describes this unit.",
+          "The best one misses more than half of its distortion, so its parameters say little about the "
+          "unit; the measured curves stand for themselves.");
+    else if (best->extrapolated)
       add("Limit extrapolated.",
           fmt::format(
               "The output reached {} % of the fitted limit: the limit is what the {} family makes "

@@ -51,7 +51,8 @@ Guard::Guard(GuardLimits limits, Hertz rate)
       // A rung at the ceiling itself must pass: room for the rounding of a cosine and of a float.
       ceiling_peak_(sine_peak(limits.ceiling) * (1.0 + 1e-6)),
       return_peak_(static_cast<float>(sine_peak(limits.return_limit))),
-      ramp_step_(1.0 / std::max(1.0, limits.mute_ramp.value() * rate.value())) {}
+      // Counted in whole samples: a sum of fractions would end one late.
+      ramp_samples_(std::max(1.0, std::ceil(limits.mute_ramp.value() * rate.value() - 1e-9))) {}
 
 void Guard::process(std::span<const double> wanted, std::span<float> out) noexcept {
   for (std::size_t n = 0; n < out.size(); ++n) {
@@ -70,10 +71,14 @@ void Guard::process(std::span<const double> wanted, std::span<float> out) noexce
       out[n] = static_cast<float>(x);
       continue;
     }
-    ramp_phase_ = std::min(1.0, ramp_phase_ + ramp_step_);
-    const double gain = 0.5 + 0.5 * std::cos(std::numbers::pi * ramp_phase_);
-    out[n] = ramp_phase_ >= 1.0 ? 0.0f : static_cast<float>(gain * last_sample_);
-    if (ramp_phase_ >= 1.0) silent_.store(true, std::memory_order_release);
+    ramped_ = std::min(ramp_samples_, ramped_ + 1.0);
+    if (ramped_ >= ramp_samples_) {
+      out[n] = 0.0f;
+      silent_.store(true, std::memory_order_release);
+      continue;
+    }
+    const double gain = 0.5 + 0.5 * std::cos(std::numbers::pi * ramped_ / ramp_samples_);
+    out[n] = static_cast<float>(gain * last_sample_);
   }
 }
 

@@ -55,8 +55,8 @@ class Guard {
   GuardLimits limits_;
   double ceiling_peak_;
   float return_peak_;
-  double ramp_step_;
-  double ramp_phase_ = 0.0;   ///< 0 open .. 1 muted, touched by the audio thread alone
+  double ramp_samples_;       ///< whole, at least 1
+  double ramped_ = 0.0;       ///< of those, so many have passed; touched by the audio thread alone
   double last_sample_ = 0.0;  ///< last good one: what the ramp fades
   bool follows_ = true;       ///< `wanted` has been usable so far
   std::atomic<int> reason_{0};

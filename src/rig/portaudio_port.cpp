@@ -254,7 +254,7 @@ bool Stream::runs_for(std::size_t frames) const {
   Growth growth;
   while (frames_.load() - from < frames) {
     Pa_Sleep(kPollMilliseconds);
-    if (growth.stopped(frames_.load())) return false;
+    if (Pa_IsStreamActive(stream_) != 1 || growth.stopped(frames_.load())) return false;
   }
   return true;
 }

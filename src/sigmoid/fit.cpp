@@ -57,13 +57,16 @@ FitResult fit_sigmoids(const std::vector<FitDatum>& data, const FitOptions& opti
   }
   const auto& families = result.families;
   for (std::size_t i = 1; i < families.size(); ++i) {
-    if (families[i].aicc < families[result.best].aicc) result.best = i;
+    const FittedFamily &one = families[i], &best = families[result.best];
+    const bool lower = one.aicc < best.aicc;
+    if (one.describes() == best.describes() ? lower : one.describes()) result.best = i;
   }
   const double lowest = families[result.best].aicc;
   result.limit_low = families[result.best].limit.low95;
   result.limit_high = families[result.best].limit.high95;
   for (std::size_t i = 0; i < families.size(); ++i) {
     const double above = families[i].aicc - lowest;
+    if (families[i].describes() != families[result.best].describes()) continue;
     if (above <= kEquallyGood) result.equally_good.push_back(i);
     if (above <= kRejected) {
       result.limit_low = std::min(result.limit_low, families[i].limit.value);

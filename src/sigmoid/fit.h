@@ -1,12 +1,13 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The sigmoid found from the harmonics of all levels at one frequency, and how sure it is.
 //
-// Each family is fitted by weighted least squares (harmonic_problem.h). What a family cannot reach
-// is its discrepancy d, a standard deviation relative to the fundamental H1 of each drive, found
-// together with the curve by maximum likelihood: the least of
-//   -2 ln L = sum of (H_n - value)^2 / (u^2 + (d H1)^2) + ln(u^2 + (d H1)^2).
-// It stays 0 unless it lowers AICc, in which it counts as a parameter. Standard errors come from
-// the inverse Fisher matrix at the final weights; 95 % intervals are normal, for limit, drive and
+// Each family is fitted by weighted least squares (harmonic_problem.h). What a family cannot reach is its
+// discrepancy d, a standard deviation relative to the distortion D of each drive (rss of the measured
+// orders 2 and up), found together with the curve by maximum likelihood: the least of
+//   -2 ln L = sum of (H_n - value)^2 / (u^2 + (d D)^2) + ln(u^2 + (d D)^2).
+// Relative to the distortion, so that a whisper counts as much as the limit: a wrong shape misses a share of
+// what each drive adds. It stays 0 unless it lowers AICc, in which it counts as a parameter. Standard errors
+// come from the inverse Fisher matrix at the final weights; 95 % intervals are normal, for limit, drive and
 // sharpness in the logarithm. They hold if the family holds.
 #pragma once
 
@@ -49,7 +50,7 @@ struct FittedFamily {
   std::optional<FittedParameter> sharpness;
   double chi_square = 0.0;  ///< with measurement uncertainty alone
   int data = 0, parameters = 0;
-  double discrepancy = 0.0;  ///< standard deviation of what the family cannot reach, relative to H1
+  double discrepancy = 0.0;  ///< standard deviation of what the family cannot reach, over the distortion
   double aicc = 0.0;         ///< -2 ln L (with the discrepancy in L) + 2k + 2k(k+1)/(n-k-1)
   /// Half the fitted curve's swing at the strongest input over the limit, 0 .. 1.
   double reach = 0.0;
@@ -57,11 +58,14 @@ struct FittedFamily {
   bool converged = false;     ///< and not at the end of the range searched for drive or bias
 
   SigmoidParameters point() const;
+  /// False when more than half of the distortion is missed, or the fit has run away: then the
+  /// parameters are no description of the unit, whatever their AICc.
+  bool describes() const { return converged && discrepancy <= 0.5; }
 };
 
 struct FitResult {
   std::vector<FittedFamily> families;     ///< in registry order
-  std::size_t best = 0;                   ///< lowest AICc
+  std::size_t best = 0;  ///< lowest AICc among those that describe the unit, else of all
   std::vector<std::size_t> equally_good;  ///< within 2 of the best, the best included
   /// Where the limit may be: the best family's 95 % interval, widened to hold the limit of every
   /// family not rejected (AICc within 10 of the best).

@@ -16,6 +16,7 @@ namespace {
 // thousandth of a standard error.
 constexpr LeastSquaresOptions kLoose{30, 1e-5}, kFair{60, 1e-8}, kFine{200, 1e-12};
 constexpr double kNormal95 = 1.959963984540054;  // 0.975 quantile of the normal distribution
+constexpr double kMostDiscrepancy = 10.0;  // of the distortion: nothing of it is described
 constexpr double kMostLogSpread = 14.0;  // of ln: a factor of a million tells nothing anyway
 
 /// The fit at one discrepancy. -2 ln L up to the constant n ln(2 pi).
@@ -45,19 +46,20 @@ class Search {
   /// The best fit without discrepancy, and the best with one. Throws NothingUsable when no rising
   /// curve fits at all.
   std::pair<Trial, Trial> run() {
-    // Where the largest harmonic counts and the small ones do not yet: few local minima.
-    const double first = std::clamp(0.1 * data_.largest_harmonic(), 1e-6, 1e-2);
+    // A tenth of each drive's distortion: where the large harmonics count and the small ones do not
+    // yet, there are few local minima.
+    const double first = 0.1;
     const Shape start = best_start(first);
 
     // Down from there in steps, each fit beginning at the one before; then up.
-    const double least = 0.1 * data_.smallest_sigma(0.0);
+    const double least = 0.1 * data_.smallest_sigma(0.0) / data_.largest_distortion();
     std::vector<Trial> trials{trial(first, start)};
     for (double d = first / kStep; d > least; d /= kStep) {
       trials.push_back(trial(d, trials.back().solution.x));
     }
     Trial without = trial(0.0, trials.back().solution.x);
     std::reverse(trials.begin(), trials.end());
-    for (double d = first * kStep; d < 1.0; d *= kStep) {
+    for (double d = first * kStep; d <= kMostDiscrepancy; d *= kStep) {
       trials.push_back(trial(d, trials.back().solution.x));
     }
     Trial with = *std::min_element(trials.begin(), trials.end(), better);
@@ -146,7 +148,7 @@ void add_common_part(std::vector<double>& covariance, const HarmonicData& data, 
   std::size_t row = 0;
   for (const HarmonicData::Rung& rung : data.rungs()) {
     for (const FitDatum& d : rung.data) {
-      const double shift = d.common_u / std::hypot(d.u, discrepancy * rung.fundamental);
+      const double shift = d.common_u / rung.sigma(d, discrepancy);
       for (std::size_t j = 0; j < width; ++j) {
         gradient[static_cast<std::size_t>(d.order)][j] += jacobian[row * width + j] * shift;
       }

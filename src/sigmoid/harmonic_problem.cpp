@@ -28,15 +28,15 @@ constexpr std::size_t kMostStarts = 6;
 constexpr double kFinestAccuracy = 1e-12, kCoarsestAccuracy = 1e-6;  // of the quadrature
 constexpr double kGridAccuracy = 1e-5;
 
-double sigma(const FitDatum& d, double fundamental, double discrepancy) {
-  return std::hypot(d.u, discrepancy * fundamental);
-}
-
 double dot(const std::vector<double>& a, const std::vector<double>& b) {
   return std::inner_product(a.begin(), a.end(), b.begin(), 0.0);
 }
 
 }  // namespace
+
+double HarmonicData::Rung::sigma(const FitDatum& d, double discrepancy) const {
+  return std::hypot(d.u, discrepancy * distortion);
+}
 
 HarmonicData::HarmonicData(const std::vector<FitDatum>& data) {
   std::vector<FitDatum> sorted = data;
@@ -45,7 +45,7 @@ HarmonicData::HarmonicData(const std::vector<FitDatum>& data) {
   });
   for (const FitDatum& d : sorted) {
     if (rungs_.empty() || rungs_.back().input_peak != d.input_peak) {
-      rungs_.push_back({d.input_peak, 0.0, {}});
+      rungs_.push_back({d.input_peak, 0.0, 0.0, {}});
     }
     rungs_.back().data.push_back(d);
     orders_ = std::max(orders_, d.order);
@@ -55,22 +55,21 @@ HarmonicData::HarmonicData(const std::vector<FitDatum>& data) {
     double largest = 0.0;
     for (const FitDatum& d : r.data) {
       if (d.order == 1) r.fundamental = std::abs(d.value);
+      if (d.order > 1) r.distortion = std::hypot(r.distortion, d.value);
       largest = std::max(largest, std::abs(d.value));
     }
     if (r.fundamental == 0.0) r.fundamental = largest;
+    if (r.distortion == 0.0) r.distortion = r.fundamental;
   }
 }
 
-double HarmonicData::largest_harmonic() const {
-  double largest = 0.0;
+double HarmonicData::largest_distortion() const {
+  double largest = 0.0, fundamental = 0.0;
   for (const Rung& r : rungs_) {
-    for (const FitDatum& d : r.data) {
-      if (d.order > 1 && r.fundamental > 0.0) {
-        largest = std::max(largest, std::abs(d.value) / r.fundamental);
-      }
-    }
+    largest = std::max(largest, r.distortion);
+    fundamental = std::max(fundamental, r.fundamental);
   }
-  return largest;
+  return fundamental > 0.0 ? largest / fundamental : 1.0;
 }
 
 double HarmonicData::smallest_sigma(double discrepancy) const {
@@ -78,7 +77,7 @@ double HarmonicData::smallest_sigma(double discrepancy) const {
   for (const Rung& r : rungs_) {
     fundamental = std::max(fundamental, r.fundamental);
     for (const FitDatum& d : r.data) {
-      smallest = std::min(smallest, sigma(d, r.fundamental, discrepancy));
+      smallest = std::min(smallest, r.sigma(d, discrepancy));
     }
   }
   return fundamental > 0.0 ? smallest / fundamental : 1.0;
@@ -87,7 +86,7 @@ double HarmonicData::smallest_sigma(double discrepancy) const {
 double HarmonicData::log_variances(double discrepancy) const {
   double sum = 0.0;
   for (const Rung& r : rungs_) {
-    for (const FitDatum& d : r.data) sum += 2.0 * std::log(sigma(d, r.fundamental, discrepancy));
+    for (const FitDatum& d : r.data) sum += 2.0 * std::log(r.sigma(d, discrepancy));
   }
   return sum;
 }
@@ -129,7 +128,7 @@ std::vector<double> HarmonicProblem::scaled_values(double discrepancy) const {
   for (const HarmonicData::Rung& rung : data_.rungs()) {
     for (const FitDatum& d : rung.data) {
       values.push_back((d.has_sign ? d.value : std::abs(d.value)) /
-                       sigma(d, rung.fundamental, discrepancy));
+                       rung.sigma(d, discrepancy));
     }
   }
   return values;
@@ -146,7 +145,7 @@ void HarmonicProblem::scaled_model(double discrepancy, std::span<const double> s
     for (const FitDatum& d : rung.data) {
       const auto n = static_cast<std::size_t>(d.order);
       const double sign = d.has_sign || set_.value[n] >= 0.0 ? 1.0 : -1.0;
-      const double scale = sign / sigma(d, rung.fundamental, discrepancy);
+      const double scale = sign / rung.sigma(d, discrepancy);
       model[row] = scale * set_.value[n];
       if (!jacobian.empty()) {
         double* const j = &jacobian[row * shape.size()];
@@ -255,7 +254,7 @@ std::optional<HarmonicProblem::Candidate> HarmonicProblem::candidate(const GridP
     for (const FitDatum& d : rung.data) {
       // For an odd S, H_n(-b) = (-1)^(n+1) H_n(b).
       const double h = negative && d.order % 2 == 0 ? -point.harmonics[row] : point.harmonics[row];
-      const double s = sigma(d, rung.fundamental, discrepancy);
+      const double s = rung.sigma(d, discrepancy);
       const double model = (d.has_sign ? h : std::abs(h)) / s;
       const double value = (d.has_sign ? d.value : std::abs(d.value)) / s;
       hh += model * model;

@@ -1,9 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The harmonics of all drives as one least-squares problem for one family.
 //
-// Residual of a datum: (H_n(model) - value) / sqrt(u^2 + (d |H1|)^2), magnitudes compared where the
-// datum has no sign; d is the discrepancy (see fit.h) and H1 the measured fundamental at that
-// drive.
+// Residual of a datum: (H_n(model) - value) / sqrt(u^2 + (d D)^2), magnitudes compared where the
+// datum has no sign; d is the discrepancy and D the measured distortion at that drive (see fit.h).
 //
 // The limit, in which the curve is linear, is eliminated: each shape (ln drive, bias and, where the
 // family has it, ln sharpness) comes with its best limit, and the search is over shapes alone
@@ -22,26 +21,28 @@
 
 namespace kneeprint {
 
-/// The data, by drive, with the fundamental that scales the discrepancy: the largest |value| of the
-/// drive where its fundamental is missing.
+/// The data, by drive.
 class HarmonicData {
  public:
   explicit HarmonicData(const std::vector<FitDatum>& data);
 
   struct Rung {
     double input_peak = 0.0;
-    double fundamental = 0.0;  ///< magnitude
+    double fundamental = 0.0;  ///< magnitude; the largest |value| where none was measured
+    double distortion = 0.0;   ///< rss of orders 2 and up; the fundamental where none was measured
     std::vector<FitDatum> data;
+
+    double sigma(const FitDatum& d, double discrepancy) const;  ///< sqrt(u^2 + (d D)^2)
   };
   const std::vector<Rung>& rungs() const { return rungs_; }  ///< ascending input
   int size() const { return size_; }
   int orders() const { return orders_; }  ///< the highest
   double strongest_input() const { return rungs_.back().input_peak; }
-  /// Largest harmonic above the first, relative to the fundamental of its drive.
-  double largest_harmonic() const;
-  /// Smallest sqrt(u^2 + (d H1)^2), relative to the largest fundamental.
+  /// Largest distortion of any drive, relative to the largest fundamental.
+  double largest_distortion() const;
+  /// Smallest sigma, relative to the largest fundamental.
   double smallest_sigma(double discrepancy) const;
-  /// Sum of ln(u^2 + (d H1)^2).
+  /// Sum of ln sigma^2.
   double log_variances(double discrepancy) const;
 
  private:

@@ -133,6 +133,7 @@ std::string model_json(const Model& model) {
   j["best"]["polarity"] = model.polarity;
   j["best"]["parameters"] = parameters_json(best, model.axis_unit);
   j["best"]["extrapolated"] = best.extrapolated;
+  j["best"]["describes_unit"] = best.describes();
   j["equally_good"] = Json::array();
   for (const std::size_t i : fit.equally_good) {
     j["equally_good"].push_back(std::string(fit.families[i].family->id));

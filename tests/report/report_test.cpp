@@ -100,7 +100,7 @@ TEST_CASE("each notice stands when it applies, alone") {
   CHECK(with([](ReportData& d) { d.model->fit.families[0].extrapolated = true; }) ==
         Titles{"Limit extrapolated."});
   CHECK(with([](ReportData& d) { d.model->fit.families[0].converged = false; }) ==
-        Titles{"Fit not converged."});
+        Titles{"No family describes this unit."});
   CHECK(with([](ReportData& d) { d.model->polarity = -1; }) == Titles{"Inverting unit."});
   CHECK(with([](ReportData& d) {
           d.model.reset();

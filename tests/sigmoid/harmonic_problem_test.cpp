@@ -54,9 +54,12 @@ TEST_CASE("data are gathered by drive, ascending, with their fundamentals") {
   CHECK(d.rungs()[0].fundamental == 0.1);
   CHECK(d.rungs()[1].fundamental == 0.05);  // none measured there: the largest value stands in
   CHECK(d.rungs()[2].fundamental == 0.4);
-  CHECK(d.largest_harmonic() == doctest::Approx(0.6));
+  CHECK(d.rungs()[0].distortion == 0.1);  // no order above the first: the fundamental stands in
+  CHECK(d.rungs()[1].distortion == doctest::Approx(0.03));
+  CHECK(d.rungs()[2].distortion == doctest::Approx(0.01));
+  CHECK(d.largest_distortion() == doctest::Approx(0.1 / 0.4));
   CHECK(d.smallest_sigma(0.0) == doctest::Approx(1e-6 / 0.4));
-  CHECK(d.smallest_sigma(1.0) == doctest::Approx(0.05 / 0.4).epsilon(1e-6));
+  CHECK(d.smallest_sigma(1.0) == doctest::Approx(0.01 / 0.4).epsilon(1e-6));
   CHECK(d.log_variances(0.0) ==
         doctest::Approx(2.0 * (3.0 * std::log(1e-6) + std::log(1e-4) + std::log(2e-6))));
 }
