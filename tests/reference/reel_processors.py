@@ -75,3 +75,13 @@ for name, m in (("straight", best), ("worn", inverted)):
     check(abs(m["parameters"]["bias"]["value"]) < 0.005,
           f"{name}: bias {m['parameters']['bias']['value']:.5f}, truth 0")
 check(best["polarity"] == 1 and inverted["polarity"] == -1, "the inversion is reported")
+
+# Other containers, depths and channel counts: AIFF, 16 bits, the unit on the second of two channels.
+stereo = WORK / "reel-stereo"
+run("reel", "--into", stereo, "--plan", plan)
+shell("sox", WORK / "clipped.wav", "-b", "16", WORK / "stereo.aiff", "vol", "-0.1dB", "remix", "0", "1")
+run("ingest", stereo, WORK / "stereo.aiff", expect=3)
+run("ingest", stereo, WORK / "stereo.aiff", "--channel", "2")
+best = model(stereo)["best"]
+check(best["family"] == "tanh" and abs(best["parameters"]["drive"]["value"] - 1) < 0.005,
+      f"AIFF, 16 bits, channel 2: {best['family']}, drive {best['parameters']['drive']['value']:.5f}")
