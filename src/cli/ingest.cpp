@@ -20,6 +20,7 @@ void run(const Options& o) {
   ingest_reel(o.folder, o.recording, o.channel, progress);
   if (o.takes_only) return;
   const Published published = publish_folder(o.folder, progress);
+  progress.clear_line();
   std::cout << result_text(o.folder, published, {}, o.json);
 }
 

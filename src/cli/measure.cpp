@@ -60,6 +60,7 @@ ExitCode run(const Options& o) {
     if (end.by_guard) return code;  // its sentence has been said
     throw;
   }
+  progress.clear_line();
   std::cout << result_text(o.into, published, end, o.json);
   return code;
 }

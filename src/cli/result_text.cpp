@@ -25,7 +25,8 @@ std::string fit_text(const Model& model) {
   if (best.sharpness) text += parameter_text("sharpness", *best.sharpness, "");
   if (!best.describes()) {
     text +=
-        "  no family describes this unit: the best one misses more than half of its distortion, so these "
+        "  no family describes this unit: the best one misses more than half of its distortion, so "
+        "these "
         "parameters say little about it\n";
   } else if (best.extrapolated) {
     text += fmt::format(

@@ -12,9 +12,10 @@ class TerminalProgress : public Progress {
   ~TerminalProgress() override;
   void step(const ProgressStep& step) override;
   void say(const std::string& sentence) override;
+  /// Takes the line away, before a result is printed.
+  void clear_line();
 
  private:
-  void clear_line();
   bool terminal_;
   std::size_t shown_ = 0;  ///< columns of the line that stands there now
 };

@@ -16,8 +16,8 @@ std::vector<double> curvature_floor(std::span<const std::complex<double>> harmon
   for (std::size_t k = 0; k < size; ++k) {
     double y = harmonics[0].real();
     for (std::size_t n = 1; n < harmonics.size(); ++n) {
-      const double theta = 2.0 * std::numbers::pi * static_cast<double>(n * k % size) /
-                           static_cast<double>(size);
+      const double theta =
+          2.0 * std::numbers::pi * static_cast<double>(n * k % size) / static_cast<double>(size);
       y += harmonics[n].real() * std::cos(theta) - harmonics[n].imag() * std::sin(theta);
     }
     square[k] = y * y;

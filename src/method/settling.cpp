@@ -18,7 +18,8 @@ struct Remaining {
 Remaining remaining_change(const BlockTrend& trend, int from, int first, Seconds block,
                            Seconds longest) {
   const auto count = static_cast<int>(trend.decibels.size());
-  // Gone within a block (e^-10): what a fast transient leaves in the first block says nothing of the rest.
+  // Gone within a block (e^-10): what a fast transient leaves in the first block says nothing of
+  // the rest.
   const double shortest = block.value() / 10.0;
   const double top = std::max(longest.value(), shortest);
   constexpr int kGrid = 24;

@@ -139,7 +139,7 @@ class SteadyReading {
   Flag take_flag_ = Flag::none;
   Line fundamental_;
   std::vector<double> floor_;  // by order, relative to the fundamental; empty: unknown
-  double drive_ = 0.0;  // level at the unit's input, in the rig's unit
+  double drive_ = 0.0;         // level at the unit's input, in the rig's unit
   LevelDbfs return_level_;
   double output_type_a_db_ = 0.0;
 };
@@ -177,12 +177,13 @@ void SteadyReading::read_fundamental(LevelPoint& level) {
   if (degrees > 120.0) level.polarity = -1.0;
 }
 
-// The rig's residual at these converter levels. Orders 2 and 3 bend the response as a whole, so they reach
-// every order of it; higher orders are taken as the cable showed them.
+// The rig's residual at these converter levels. Orders 2 and 3 bend the response as a whole, so
+// they reach every order of it; higher orders are taken as the cable showed them.
 void SteadyReading::read_floor() {
   const auto loop = [&](int n) { return rig_.floor.at(spec_.send, return_level_, n); };
   if (!loop(2) || !loop(3)) return;
-  std::vector<std::complex<double>> harmonics{spectra_.mean(0, first_, [](int) { return 0.0; }).mean};
+  std::vector<std::complex<double>> harmonics{
+      spectra_.mean(0, first_, [](int) { return 0.0; }).mean};
   for (int n = 1; n <= spec_.settings.orders; ++n) {
     harmonics.push_back(in_reach(n) ? line(n).mean : 0.0);
   }

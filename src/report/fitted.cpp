@@ -73,7 +73,8 @@ Table family_table(const Model& model) {
   Table t;
   t.caption =
       "Every family, fitted to the same harmonics. Lower AICc is better; within 2 of the best the "
-      "data do not decide. Discrepancy: what the family cannot reach, as a share of each drive's distortion. "
+      "data do not decide. Discrepancy: what the family cannot reach, as a share of each drive's "
+      "distortion. "
       "Chi-square counts measurement uncertainty alone.";
   t.heads = {"family",
              "AICc",

@@ -67,7 +67,8 @@ Section notices_section(const ReportData& data) {
   if (const FittedFamily* best = best_family(data)) {
     if (!best->describes())
       add("No family describes this unit.",
-          "The best one misses more than half of its distortion, so its parameters say little about the "
+          "The best one misses more than half of its distortion, so its parameters say little "
+          "about the "
           "unit; the measured curves stand for themselves.");
     else if (best->extrapolated)
       add("Limit extrapolated.",

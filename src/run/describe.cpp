@@ -15,6 +15,7 @@ namespace kneeprint {
 namespace {
 
 constexpr double kAxisDegrees = 20.0;
+constexpr double kNothing = 1e-8;  // -160 dB: a symmetric curve predicts no even product at all
 constexpr double kClearOfNoise =
     10.0;  // amplitude over component_u: 20 dB, magnitude bias under 0.5 %
 
@@ -62,7 +63,7 @@ HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const R
     const auto it = std::find_if(predicted.begin(), predicted.end(),
                                  [&](const PredictedProduct& q) { return q.product == p.product; });
     if (it == predicted.end()) continue;
-    const double predicted_db = 20.0 * std::log10(std::max(it->ratio, 1e-15));
+    const double predicted_db = 20.0 * std::log10(std::max(it->ratio, kNothing));
     if (p.flag != Flag::none || !p.db) {
       result.points.push_back({p.method, p.product, p.drive, {}, {}, predicted_db});
       continue;

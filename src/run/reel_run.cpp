@@ -86,8 +86,7 @@ void ingest_reel(const std::filesystem::path& path, const std::filesystem::path&
   }
   const Waveform& recording = channels[static_cast<std::size_t>(channel - 1)];
   const ReelPlan reel = reel_plan(plan, rig, ceiling_of(plan, rig, std::nullopt, true));
-  const ReelFound found =
-      find_reel(recording, reel.layout, file.string(), code_of(plan));
+  const ReelFound found = find_reel(recording, reel.layout, file.string(), code_of(plan));
   progress.say(fmt::format("reel found {:.3f} s into the recording, {}, clock {:+.2f} ppm",
                            found.start / recording.rate.value(),
                            found.polarity > 0 ? "upright" : "inverted", found.clock_ppm));

@@ -1,14 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The sigmoid found from the harmonics of all levels at one frequency, and how sure it is.
 //
-// Each family is fitted by weighted least squares (harmonic_problem.h). What a family cannot reach is its
-// discrepancy d, a standard deviation relative to the distortion D of each drive (rss of the measured
-// orders 2 and up), found together with the curve by maximum likelihood: the least of
+// Each family is fitted by weighted least squares (harmonic_problem.h). What a family cannot reach
+// is its discrepancy d, a standard deviation relative to the distortion D of each drive (rss of the
+// measured orders 2 and up), found together with the curve by maximum likelihood: the least of
 //   -2 ln L = sum of (H_n - value)^2 / (u^2 + (d D)^2) + ln(u^2 + (d D)^2).
-// Relative to the distortion, so that a whisper counts as much as the limit: a wrong shape misses a share of
-// what each drive adds. It stays 0 unless it lowers AICc, in which it counts as a parameter. Standard errors
-// come from the inverse Fisher matrix at the final weights; 95 % intervals are normal, for limit, drive and
-// sharpness in the logarithm. They hold if the family holds.
+// Relative to the distortion, so that a whisper counts as much as the limit: a wrong shape misses a
+// share of what each drive adds. It stays 0 unless it lowers AICc, in which it counts as a
+// parameter. Standard errors come from the inverse Fisher matrix at the final weights; 95 %
+// intervals are normal, for limit, drive and sharpness in the logarithm. They hold if the family
+// holds.
 #pragma once
 
 #include <optional>
@@ -27,8 +28,8 @@ struct FitDatum {
   double u = 0.0;           ///< standard uncertainty, > 0
   /// Phase within 20 degrees of the axis, or the datum is an in-phase part under noise.
   bool has_sign = true;
-  /// The part of u that every drive of this order has in common: the rig's own harmonic, of known size
-  /// and unknown phase. It does not average out over the drives.
+  /// The part of u that every drive of this order has in common: the rig's own harmonic, of known
+  /// size and unknown phase. It does not average out over the drives.
   double common_u = 0.0;
 };
 
@@ -50,8 +51,9 @@ struct FittedFamily {
   std::optional<FittedParameter> sharpness;
   double chi_square = 0.0;  ///< with measurement uncertainty alone
   int data = 0, parameters = 0;
-  double discrepancy = 0.0;  ///< standard deviation of what the family cannot reach, over the distortion
-  double aicc = 0.0;         ///< -2 ln L (with the discrepancy in L) + 2k + 2k(k+1)/(n-k-1)
+  double discrepancy =
+      0.0;            ///< standard deviation of what the family cannot reach, over the distortion
+  double aicc = 0.0;  ///< -2 ln L (with the discrepancy in L) + 2k + 2k(k+1)/(n-k-1)
   /// Half the fitted curve's swing at the strongest input over the limit, 0 .. 1.
   double reach = 0.0;
   bool extrapolated = false;  ///< reach < 0.8: the limit was never approached
@@ -64,7 +66,7 @@ struct FittedFamily {
 };
 
 struct FitResult {
-  std::vector<FittedFamily> families;     ///< in registry order
+  std::vector<FittedFamily> families;  ///< in registry order
   std::size_t best = 0;  ///< lowest AICc among those that describe the unit, else of all
   std::vector<std::size_t> equally_good;  ///< within 2 of the best, the best included
   /// Where the limit may be: the best family's 95 % interval, widened to hold the limit of every

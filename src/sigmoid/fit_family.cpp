@@ -16,7 +16,7 @@ namespace {
 // thousandth of a standard error.
 constexpr LeastSquaresOptions kLoose{30, 1e-5}, kFair{60, 1e-8}, kFine{200, 1e-12};
 constexpr double kNormal95 = 1.959963984540054;  // 0.975 quantile of the normal distribution
-constexpr double kMostDiscrepancy = 10.0;  // of the distortion: nothing of it is described
+constexpr double kMostDiscrepancy = 10.0;        // of the distortion: nothing of it is described
 constexpr double kMostLogSpread = 14.0;  // of ln: a factor of a million tells nothing anyway
 
 /// The fit at one discrepancy. -2 ln L up to the constant n ln(2 pi).

@@ -127,8 +127,7 @@ std::vector<double> HarmonicProblem::scaled_values(double discrepancy) const {
   std::vector<double> values;
   for (const HarmonicData::Rung& rung : data_.rungs()) {
     for (const FitDatum& d : rung.data) {
-      values.push_back((d.has_sign ? d.value : std::abs(d.value)) /
-                       rung.sigma(d, discrepancy));
+      values.push_back((d.has_sign ? d.value : std::abs(d.value)) / rung.sigma(d, discrepancy));
     }
   }
   return values;

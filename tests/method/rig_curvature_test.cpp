@@ -16,7 +16,8 @@ TEST_CASE("a pure sine shows the residual itself, and three times the third on t
 }
 
 TEST_CASE("harmonics of the response mix with the rig's curve") {
-  // y = cos t + h cos 2t: in y^3, order 2 carries 3/4 (2 h) + 3/4 h^3 = 3/2 h; in y^2, order 3 carries h.
+  // y = cos t + h cos 2t: in y^3, order 2 carries 3/4 (2 h) + 3/4 h^3 = 3/2 h; in y^2, order 3
+  // carries h.
   const double h = 0.01;
   const std::vector<std::complex<double>> bent{0.0, 1.0, h, 0.0, 0.0};
   const auto f = curvature_floor(bent, 1e-6, 1e-7);

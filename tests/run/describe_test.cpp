@@ -9,7 +9,8 @@ using namespace kneeprint;
 
 namespace {
 
-HarmonicPoint point(int order, double in_phase, double quadrature, double u, Flag flag = Flag::none) {
+HarmonicPoint point(int order, double in_phase, double quadrature, double u,
+                    Flag flag = Flag::none) {
   HarmonicPoint p;
   p.frequency_hz = 998.0;
   p.drive = -20.0;
