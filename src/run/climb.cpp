@@ -2,8 +2,9 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <chrono>
 #include <cmath>
-#include <map>
+#include <thread>
 
 #include "platform/os.h"
 #include "print/folder.h"
@@ -69,6 +70,7 @@ class Climb {
 
  private:
   void open_folder();
+  void warm_up();
   void check_chain();
   TakeVerdict take(const TakeSpec& first, int number);
   TakeVerdict play(TakeSpec spec, int number, std::vector<Waveform>& response, int& attempts);
@@ -123,6 +125,20 @@ void Climb::open_folder() {
       return true;
     }
   });
+}
+
+// Idle time for gear that drifts while it warms; a virtual unit has none to wait for.
+void Climb::warm_up() {
+  if (!port_.info().live) return;
+  using Clock = std::chrono::steady_clock;
+  const auto end = Clock::now() + std::chrono::duration<double>(request_.plan.warm_up.value());
+  if (Clock::now() < end) {
+    progress_.say(
+        fmt::format("warming up for {:g} s, as the plan asks", request_.plan.warm_up.value()));
+  }
+  while (Clock::now() < end && !os::interrupted()) {
+    std::this_thread::sleep_for(std::chrono::milliseconds(50));
+  }
 }
 
 std::vector<Waveform> Climb::record(const Waveform& stimulus, std::size_t tail, int number) {
@@ -303,6 +319,7 @@ ClimbEnd Climb::finish(ClimbEnd end) {
 ClimbEnd Climb::run() {
   open_folder();
   try {
+    warm_up();
     check_chain();
     for (std::size_t rung = 0; rung < ladder_.rungs.size(); ++rung) {
       const LevelDbfs send = ladder_.rungs[rung];
