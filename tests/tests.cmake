@@ -30,3 +30,5 @@ foreach(script ${reference_scripts})
                    -P ${PROJECT_SOURCE_DIR}/tests/run_reference.cmake)
   set_tests_properties("reference: ${check}" PROPERTIES TIMEOUT 900)
 endforeach()
+# A live server without realtime priority has the machine to itself.
+set_tests_properties("reference: live_server" PROPERTIES RUN_SERIAL TRUE)
