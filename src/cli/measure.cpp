@@ -30,9 +30,9 @@ ExitCode run(const Options& o) {
   // it).
   if (o.resume && o.plan.empty() && folder.exists()) {
     request.plan =
-        parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_ids());
+        parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_needs());
   } else {
-    request.plan = load_plan(o.plan.empty() ? "portrait" : o.plan, method_ids());
+    request.plan = load_plan(o.plan.empty() ? "portrait" : o.plan, method_needs());
   }
   if (!o.resume && folder.exists()) {
     throw InputError(

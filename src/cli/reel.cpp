@@ -18,7 +18,7 @@ struct Options {
 void run(const Options& o) {
   MeasureRequest request;
   request.into = o.into;
-  request.plan = load_plan(o.plan, method_ids());
+  request.plan = load_plan(o.plan, method_needs());
   request.has_rig_file = !o.rig.empty();
   if (request.has_rig_file) request.rig = read_rig(o.rig);
   if (!request.has_rig_file) request.rig.name = "reel";

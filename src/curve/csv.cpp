@@ -5,6 +5,7 @@
 
 #include <fmt/format.h>
 
+#include <array>
 #include <charconv>
 #include <cmath>
 #include <span>
@@ -65,6 +66,8 @@ std::span<const Column<LevelPoint>> columns() {
       {"asked_hz", &P::asked_hz},
       {"blocks", &P::blocks},
       {"settled_after_s", &P::settled_after_s},
+      {"direction", &P::direction},
+      {"integration", &P::integration},
   };
   return list;
 }
@@ -90,6 +93,7 @@ std::span<const Column<HarmonicPoint>> columns() {
       {"quadrature", &P::quadrature},
       {"component_u", &P::component_u},
       {"dof", &P::dof, true},
+      {"direction", &P::direction},
   };
   return list;
 }
@@ -128,6 +132,86 @@ std::span<const Column<ResponsePoint>> columns() {
       {"magnitude_db", &P::magnitude_db},
       {"phase_deg", &P::phase_deg},
       {"expanded_u_db", &P::expanded_u_db},
+      {"flag", &P::flag},
+      {"method", &P::method},
+  };
+  return list;
+}
+
+template <>
+std::span<const Column<ProductPoint>> columns() {
+  using P = ProductPoint;
+  static const std::vector<Column<P>> list{
+      {"method", &P::method},
+      {"f1_hz", &P::f1_hz},
+      {"f2_hz", &P::f2_hz},
+      {"drive", &P::drive},
+      {"level_unit", &P::unit},
+      {"k1", &P::k1},
+      {"k2", &P::k2},
+      {"order", &P::order},
+      {"frequency_hz", &P::frequency_hz},
+      {"level", &P::level},
+      {"relative_db", &P::relative_db},
+      {"phase_deg", &P::phase_deg},
+      {"expanded_u_db", &P::expanded_u_db},
+      {"flag", &P::flag},
+      {"note", &P::note},
+  };
+  return list;
+}
+
+template <>
+std::span<const Column<GlidePoint>> columns() {
+  using P = GlidePoint;
+  static const std::vector<Column<P>> list{
+      {"frequency_hz", &P::frequency_hz},
+      {"direction", &P::direction},
+      {"drive", &P::drive},
+      {"level_unit", &P::unit},
+      {"order", &P::order},
+      {"level", &P::level},
+      {"relative_db", &P::relative_db},
+      {"phase_deg", &P::phase_deg},
+      {"expanded_u_db", &P::expanded_u_db},
+      {"floor_db", &P::floor_db},
+      {"flag", &P::flag},
+  };
+  return list;
+}
+
+template <>
+std::span<const Column<ScalarPoint>> columns() {
+  using P = ScalarPoint;
+  static const std::vector<Column<P>> list{
+      {"method", &P::method},
+      {"frequency_hz", &P::frequency_hz},
+      {"drive", &P::drive},
+      {"level_unit", &P::unit},
+      {"figure", &P::figure},
+      {"state", &P::state},
+      {"value", &P::value},
+      {"value_unit", &P::value_unit},
+      {"expanded_u", &P::expanded_u},
+      {"floor", &P::floor},
+      {"flag", &P::flag},
+  };
+  return list;
+}
+
+template <>
+std::span<const Column<TracePoint>> columns() {
+  using P = TracePoint;
+  static const std::vector<Column<P>> list{
+      {"method", &P::method},
+      {"drive", &P::drive},
+      {"level_unit", &P::unit},
+      {"trace", &P::trace},
+      {"x", &P::x},
+      {"x_unit", &P::x_unit},
+      {"value", &P::value},
+      {"value_unit", &P::value_unit},
+      {"expanded_u", &P::expanded_u},
       {"flag", &P::flag},
   };
   return list;
@@ -281,11 +365,29 @@ std::string harmonics_csv(const Curves& c) { return table(c.harmonics); }
 std::string intermod_csv(const Curves& c) { return table(c.intermods); }
 std::string response_csv(const Curves& c) { return table(c.responses); }
 
+std::span<const CsvTable> csv_tables() {
+  static constexpr std::array kTables{
+      CsvTable{"levels.csv", levels_csv},
+      CsvTable{"harmonics.csv", harmonics_csv},
+      CsvTable{"intermod.csv", intermod_csv},
+      CsvTable{"response.csv", response_csv},
+      CsvTable{"products.csv", [](const Curves& c) { return table(c.products); }},
+      CsvTable{"glide.csv", [](const Curves& c) { return table(c.glides); }},
+      CsvTable{"scalars.csv", [](const Curves& c) { return table(c.scalars); }},
+      CsvTable{"traces.csv", [](const Curves& c) { return table(c.traces); }},
+  };
+  return kTables;
+}
+
 Curves read_curves(const std::filesystem::path& folder) {
   return {read_table<LevelPoint>(folder / "levels.csv"),
           read_table<HarmonicPoint>(folder / "harmonics.csv"),
           read_table<IntermodPoint>(folder / "intermod.csv"),
-          read_table<ResponsePoint>(folder / "response.csv")};
+          read_table<ResponsePoint>(folder / "response.csv"),
+          read_table<ProductPoint>(folder / "products.csv"),
+          read_table<GlidePoint>(folder / "glide.csv"),
+          read_table<ScalarPoint>(folder / "scalars.csv"),
+          read_table<TracePoint>(folder / "traces.csv")};
 }
 
 }  // namespace kneeprint

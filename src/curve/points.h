@@ -40,6 +40,7 @@ struct HarmonicPoint {
   double quadrature = 0.0;
   double component_u = 0.0;  ///< standard uncertainty of each component: noise and rig floor
   double dof = kInfiniteDof;
+  std::string direction = "up";  ///< of the ladder when it was taken: up, down
 };
 
 struct LevelPoint {
@@ -62,6 +63,8 @@ struct LevelPoint {
   double asked_hz = 0.0;  ///< the frequency the plan named
   int blocks = 0;         ///< averaged
   double settled_after_s = 0.0;
+  std::string direction = "up";       ///< of the ladder when it was taken: up, down
+  std::string integration = "fixed";  ///< why it ended: reached, time-spent, fixed (nothing wanted)
 };
 
 struct IntermodPoint {
@@ -86,6 +89,64 @@ struct ResponsePoint {
   Cell phase_deg;     ///< order 1: output minus input, the rig's delay removed; else as harmonics
   Cell expanded_u_db;
   Flag flag = Flag::none;
+  std::string method = "steady";  ///< steady, sweep
+};
+
+/// One line of a spectrum of two (or more) tones: k1 f1 + k2 f2.
+struct ProductPoint {
+  std::string method;
+  double f1_hz = 0.0, f2_hz = 0.0;
+  double drive = 0.0;  ///< rms of the sine with the same peak
+  LevelUnit unit = LevelUnit::dbfs;
+  int k1 = 0, k2 = 0;
+  int order = 0;              ///< |k1| + |k2|
+  double frequency_hz = 0.0;  ///< |k1 f1 + k2 f2|
+  Cell level;                 ///< rms at the unit's output, in `unit`
+  Cell relative_db;           ///< to the method's reference (f2, or the sum of both tones)
+  Cell phase_deg;             ///< cosine reference, minus k1 and k2 times the output tones' phases
+  Cell expanded_u_db;         ///< 95 %, of relative_db
+  Flag flag = Flag::none;
+  std::string note = "-";  ///< "falls on 2f2-f1", "past the highest frequency shown"; "-": nothing
+};
+
+/// A harmonic tracked while the level glides.
+struct GlidePoint {
+  double frequency_hz = 0.0;
+  std::string direction = "up";  ///< up, down
+  double drive = 0.0;
+  LevelUnit unit = LevelUnit::dbfs;
+  int order = 1;
+  Cell level, relative_db, phase_deg, expanded_u_db, floor_db;  ///< as in HarmonicPoint
+  Flag flag = Flag::none;
+};
+
+/// One figure that is a single number with a name: noise, fill, a recovery time, a loop's width.
+struct ScalarPoint {
+  std::string method;
+  Cell frequency_hz;  ///< where the figure belongs to one
+  Cell drive;         ///< likewise
+  LevelUnit unit = LevelUnit::dbfs;
+  std::string figure;       ///< stable id: "noise-a", "fill", "recovery"
+  std::string state = "-";  ///< condition that tells rows of one figure apart; "-": none
+  Cell value;
+  std::string value_unit;  ///< "dBu", "dB", "%", "s", "Hz"; "1" for plain ratios
+  Cell expanded_u;         ///< 95 %, in value_unit
+  Cell floor;              ///< the rig's own, in value_unit
+  Flag flag = Flag::none;
+};
+
+/// A sampled curve that belongs to one take: distortion per band, gain against time.
+struct TracePoint {
+  std::string method;
+  Cell drive;
+  LevelUnit unit = LevelUnit::dbfs;
+  std::string trace;  ///< stable id: "distortion", "masked-threshold", "gain"
+  double x = 0.0;
+  std::string x_unit;  ///< "Hz", "s"
+  Cell value;
+  std::string value_unit;
+  Cell expanded_u;  ///< 95 %, in value_unit
+  Flag flag = Flag::none;
 };
 
 struct Curves {
@@ -93,6 +154,14 @@ struct Curves {
   std::vector<HarmonicPoint> harmonics;
   std::vector<IntermodPoint> intermods;
   std::vector<ResponsePoint> responses;
+  std::vector<ProductPoint> products;
+  std::vector<GlidePoint> glides;
+  std::vector<ScalarPoint> scalars;
+  std::vector<TracePoint> traces;
+
+  bool empty() const;
+  /// All rows of `more` after these.
+  void append(Curves&& more);
 };
 
 }  // namespace kneeprint

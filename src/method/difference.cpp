@@ -34,7 +34,7 @@ TakeVerdict read(const TakeSpec& spec, const TakeData& take, const RigView& rig,
   return reading.verdict();
 }
 
-std::vector<PredictedProduct> predict(const TwoToneCurve& curve, double peak) {
+std::vector<PredictedProduct> predict(const TwoToneCurve& curve, const StepOptions&, double peak) {
   const auto a =
       curve(kCcif.share1 * peak, kCcif.share2 * peak, {{1, 0}, {0, 1}, {-1, 1}, {2, -1}, {-1, 2}});
   const double both = std::abs(a[0]) + std::abs(a[1]);
@@ -49,7 +49,8 @@ Method ccif_difference() {
   return {"ccif",
           "difference-frequency distortion, 19 and 20 kHz, 1:1",
           "IEC 60268-3; ITU-R twin tone",
-          false,
+          Placement::every_rung,
+          {.id = "ccif"},
           [](const TakeSpec& s, Hertz r) { return two_tone_first_hold_blocks(kCcif, s, r); },
           [](const TakeSpec& s, Hertz r) { return two_tone_block_length(kCcif, s, r); },
           [](const TakeSpec& s, Hertz r) { return two_tone_stimulus(kCcif, s, r); },

@@ -14,6 +14,7 @@
 
 #include "curve/floor.h"
 #include "curve/points.h"
+#include "curve/step_options.h"
 #include "signal/waveform.h"
 
 namespace kneeprint {
@@ -25,6 +26,10 @@ struct TakeSettings {
   int blocks = 4;                      ///< wanted average; at least 3 are kept
   Seconds longest_time_constant{0.5};  ///< of the unit
   Decibels wanted_uncertainty{0.01};   ///< remaining change that counts as settled
+  /// Expanded uncertainty wanted of harmonics 2 .. wanted_orders (those not under the noise); 0:
+  /// nothing is wanted, the hold is as long as `blocks` says.
+  Decibels wanted_harmonic_u{0.0};
+  int wanted_orders = 5;
 };
 
 /// One take: this method, this frequency, this drive, held for so many blocks.
@@ -35,6 +40,17 @@ struct TakeSpec {
   int rung = 0;
   int hold_blocks = 0;  ///< blocks played; the first ones may be dropped as settling
   TakeSettings settings;
+  StepOptions options{};
+  LevelDbfs lowest;   ///< the ladder's lowest rung: where a gliding level begins
+  int number = 0;     ///< in the journal
+  bool down = false;  ///< taken while the ladder descends
+};
+
+/// When on its way over the ladder a method is played.
+enum class Placement {
+  every_rung,     ///< at the rung's level
+  before_ladder,  ///< once, at the lowest rung's level
+  after_ladder,   ///< once, at the highest rung that was reached
 };
 
 /// Where the steady part stands in the stimulus, and so in the aligned response.
@@ -47,7 +63,9 @@ struct HoldLayout {
 
 struct Stimulus {
   Waveform wave;
-  HoldLayout hold;  ///< periodic from block to block: repeated and lost frames show there
+  /// Periodic from block to block: repeated and lost frames show there. Fewer than two blocks: not
+  /// periodic, and the method's own reading looks for them where it can.
+  HoldLayout hold;
   Hertz lowest_tone{0.0};
 };
 
@@ -80,6 +98,9 @@ struct TakeVerdict {
   bool clipped = false;
   std::optional<double> thd_f_percent;  ///< steady methods
   std::optional<double> output_level;   ///< of the fundamental, in the return's unit
+  /// By how much longer the hold must be for the wanted uncertainty of every wanted order; at most
+  /// 1: reached. Empty: nothing is wanted.
+  std::optional<double> longer;
 };
 
 /// Signed peak amplitudes of the products (k1, k2) of a curve driven by two sines of peaks u1 and
@@ -94,22 +115,24 @@ struct PredictedProduct {
 
 struct Method {
   std::string_view id;
-  std::string_view title;                                 ///< for pages
-  std::string_view source;                                ///< published definition
-  bool wants_frequency;                                   ///< the plan lists frequencies for it
+  std::string_view title;   ///< for pages
+  std::string_view source;  ///< published definition
+  Placement placement;
+  MethodNeeds needs;                                      ///< what a plan's step must or may say
   int (*first_hold_blocks)(const TakeSpec&, Hertz rate);  ///< blocks for a unit without memory
   Seconds (*block_length)(const TakeSpec&, Hertz rate);
   Stimulus (*stimulus)(const TakeSpec&, Hertz rate);
   /// Appends points to `out`. Never throws for bad data: it flags.
   TakeVerdict (*read)(const TakeSpec&, const TakeData&, const RigView&, Curves& out);
   /// The same products by a memoryless curve, for the stimulus' peak at the unit's input; nullptr
-  /// for methods that the fit itself uses.
-  std::vector<PredictedProduct> (*predict)(const TwoToneCurve&, double peak);
+  /// for methods that the fit itself uses, or that no closed rule predicts.
+  std::vector<PredictedProduct> (*predict)(const TwoToneCurve&, const StepOptions&, double peak);
 };
 
 std::span<const Method> methods();
 /// nullptr when unknown.
 const Method* find_method(std::string_view id);
-std::vector<std::string> method_ids();
+/// What a plan may ask for.
+std::vector<MethodNeeds> method_needs();
 
 }  // namespace kneeprint

@@ -45,7 +45,7 @@ TakeVerdict read(const TakeSpec& spec, const TakeData& take, const RigView& rig,
   return reading.verdict();
 }
 
-std::vector<PredictedProduct> predict(const TwoToneCurve& curve, double peak) {
+std::vector<PredictedProduct> predict(const TwoToneCurve& curve, const StepOptions&, double peak) {
   const auto a =
       curve(kSmpte.share1 * peak, kSmpte.share2 * peak, {{0, 1}, {-1, 1}, {1, 1}, {-2, 1}, {2, 1}});
   const double carrier = std::abs(a[0]);
@@ -60,7 +60,8 @@ Method smpte_modulation() {
   return {"smpte",
           "modulation distortion, 60 Hz and 7 kHz, 4:1",
           "IEC 60268-3; SMPTE RP 120",
-          false,
+          Placement::every_rung,
+          {.id = "smpte"},
           [](const TakeSpec& s, Hertz r) { return two_tone_first_hold_blocks(kSmpte, s, r); },
           [](const TakeSpec& s, Hertz r) { return two_tone_block_length(kSmpte, s, r); },
           [](const TakeSpec& s, Hertz r) { return two_tone_stimulus(kSmpte, s, r); },

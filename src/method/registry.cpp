@@ -24,10 +24,10 @@ const Method* find_method(std::string_view id) {
   return nullptr;
 }
 
-std::vector<std::string> method_ids() {
-  std::vector<std::string> ids;
-  for (const Method& m : methods()) ids.emplace_back(m.id);
-  return ids;
+std::vector<MethodNeeds> method_needs() {
+  std::vector<MethodNeeds> needs;
+  for (const Method& m : methods()) needs.push_back(m.needs);
+  return needs;
 }
 
 }  // namespace kneeprint

@@ -68,7 +68,7 @@ Plan atlas() {
 
 std::vector<std::string> built_in_plans() { return {"glance", "portrait", "atlas"}; }
 
-Plan load_plan(const std::string& name_or_file, const std::vector<std::string>& known_methods) {
+Plan load_plan(const std::string& name_or_file, const std::vector<MethodNeeds>& known_methods) {
   for (const Plan& plan : {glance(), portrait(), atlas()}) {
     if (plan.name == name_or_file) return parse_plan(plan_json(plan), plan.name, known_methods);
   }

@@ -19,8 +19,8 @@ using nlohmann::ordered_json;
 constexpr int kNewestVersion = 1;
 const std::string kFormat = "kneeprint-plan";
 
-/// The one method whose step lists frequencies; every other fixes its own tones.
-const std::string kSteady = "steady";
+/// The method whose harmonics the fit uses.
+const std::string kFitted = "steady";
 
 constexpr int kMostRungs = 400;
 /// Converters run at up to 192 kHz; 90 kHz leaves room for their anti-alias filter.
@@ -94,41 +94,82 @@ LadderPlan read_ladder(const JsonFields& fields) {
   return ladder;
 }
 
-StepPlan read_step(const JsonFields& fields, const std::vector<std::string>& known_methods) {
-  const std::string frequencies = "frequencies_hz";
-  fields.allow_only({"method", frequencies});
-  StepPlan step;
-  step.method = fields.choice("method", "method", known_methods);
-  if (step.method != kSteady) {
-    if (fields.has(frequencies)) {
+std::vector<Hertz> read_frequencies(const JsonFields& fields, const std::string& name) {
+  std::vector<Hertz> out;
+  for (const double hz : fields.numbers(name, kFrequency)) {
+    if (std::find(out.begin(), out.end(), Hertz(hz)) != out.end()) {
+      fields.refuse(name, fmt::format("{} Hz is listed twice; expected once", hz));
+    }
+    out.emplace_back(hz);
+  }
+  if (out.empty()) fields.refuse(name, "found []; expected at least one frequency");
+  return out;
+}
+
+StepOptions read_options(const JsonFields& fields, const MethodNeeds& method) {
+  StepOptions options;
+  const auto given = [&](const std::string& name, bool allowed) {
+    if (!fields.has(name)) return false;
+    if (!allowed) {
       fields.refuse(
-          frequencies,
-          fmt::format("method \"{}\" fixes its own tones; expected no such field", step.method));
+          name, fmt::format("method \"{}\" does not use it; expected no such field", method.id));
     }
-    return step;
-  }
-  for (const double hz : fields.numbers(frequencies, kFrequency)) {
-    if (std::find(step.frequencies.begin(), step.frequencies.end(), Hertz(hz)) !=
-        step.frequencies.end()) {
-      fields.refuse(frequencies, fmt::format("{} Hz is listed twice; expected once", hz));
+    return true;
+  };
+  if (given("tones_hz", method.tones)) {
+    options.tones = read_frequencies(fields, "tones_hz");
+    if (options.tones.size() != 2) {
+      fields.refuse("tones_hz",
+                    fmt::format("found {} frequencies; expected two", options.tones.size()));
     }
-    step.frequencies.emplace_back(hz);
+    if (!(options.tones[0] < options.tones[1])) {
+      fields.refuse("tones_hz", "expected the lower frequency first");
+    }
+  } else if (method.tones_required) {
+    fields.refuse("tones_hz",
+                  fmt::format("missing; method \"{}\" needs two frequencies", method.id));
   }
-  if (step.frequencies.empty()) {
-    fields.refuse(frequencies, "found []; expected at least one frequency");
+  if (given("ratio", method.ratio)) options.ratio = fields.number("ratio", {0.01, 100.0});
+  if (given("duration_s", method.duration)) {
+    options.duration = Seconds(fields.number("duration_s", {0.1, 120.0}));
+  }
+  if (given("listening_db_spl", method.listening)) {
+    options.listening_db_spl = fields.number("listening_db_spl", {20.0, 120.0});
+  }
+  return options;
+}
+
+StepPlan read_step(const JsonFields& fields, const std::vector<MethodNeeds>& known_methods) {
+  const std::string frequencies = "frequencies_hz";
+  fields.allow_only(
+      {"method", frequencies, "every", "tones_hz", "ratio", "duration_s", "listening_db_spl"});
+  std::vector<std::string> ids;
+  for (const MethodNeeds& m : known_methods) ids.push_back(m.id);
+  StepPlan step;
+  step.method = fields.choice("method", "method", ids);
+  const MethodNeeds& method = *std::find_if(known_methods.begin(), known_methods.end(),
+                                            [&](auto& m) { return m.id == step.method; });
+  if (fields.has("every")) step.every = fields.integer("every", 1, kMostRungs);
+  step.options = read_options(fields, method);
+  if (method.frequencies) {
+    step.frequencies = read_frequencies(fields, frequencies);
+  } else if (fields.has(frequencies)) {
+    fields.refuse(
+        frequencies,
+        fmt::format("method \"{}\" fixes its own tones; expected no such field", step.method));
   }
   return step;
 }
 
 bool play_the_same(const StepPlan& a, const StepPlan& b) {
-  if (a.method != b.method) return false;
+  if (a.method != b.method || a.options != b.options) return false;
   return a.frequencies.empty() ||
          std::find_first_of(a.frequencies.begin(), a.frequencies.end(), b.frequencies.begin(),
                             b.frequencies.end()) != a.frequencies.end();
 }
 
 std::vector<StepPlan> read_steps(const JsonFields& plan,
-                                 const std::vector<std::string>& known_methods) {
+                                 const std::vector<MethodNeeds>& known_methods) {
   std::vector<StepPlan> steps;
   for (const JsonFields& fields : plan.objects("steps")) {
     const StepPlan step = read_step(fields, known_methods);
@@ -150,6 +191,7 @@ Hertz read_fit_frequency(const JsonFields& fields, const std::vector<StepPlan>& 
   const double hz = fields.number(name, kFrequency);
   std::vector<std::string> choices;
   for (const StepPlan& step : steps) {
+    if (step.method != kFitted) continue;
     for (const Hertz f : step.frequencies) {
       if (f.value() == hz) return f;
       choices.push_back(fmt::format("{}", f.value()));
@@ -158,7 +200,7 @@ Hertz read_fit_frequency(const JsonFields& fields, const std::vector<StepPlan>& 
   fields.refuse(
       name,
       choices.empty()
-          ? fmt::format("found {}; expected a step of method \"{}\" that plays it", hz, kSteady)
+          ? fmt::format("found {}; expected a step of method \"{}\" that plays it", hz, kFitted)
           : fmt::format("found {}; expected a frequency of the steps: {}", hz, listed(choices)));
 }
 
@@ -178,6 +220,11 @@ void read_settings(const JsonFields& fields, Plan& plan) {
   if (fields.has("wanted_uncertainty_db")) {
     plan.wanted_uncertainty = Decibels(fields.number("wanted_uncertainty_db", {0.0, 10.0, true}));
   }
+  if (fields.has("wanted_harmonic_u_db")) {
+    plan.wanted_harmonic_u = Decibels(fields.number("wanted_harmonic_u_db", {0.0, 20.0}));
+  }
+  if (fields.has("wanted_orders")) plan.wanted_orders = fields.integer("wanted_orders", 2, 20);
+  if (fields.has("descend")) plan.descend = fields.boolean("descend");
   const Seconds averaged = plan.block * plan.blocks;
   constexpr double kRounding = 1e-12;  // 3 blocks of 0.1 s fit into 0.3 s
   if (plan.settle_limit < averaged * (1.0 - kRounding)) {
@@ -216,19 +263,27 @@ ordered_json number(double x) {
 ordered_json json_of(const StepPlan& step) {
   ordered_json json{{"method", step.method}};
   for (const Hertz f : step.frequencies) json["frequencies_hz"].push_back(number(f.value()));
+  if (step.every != 1) json["every"] = step.every;
+  for (const Hertz f : step.options.tones) json["tones_hz"].push_back(number(f.value()));
+  if (step.options.ratio) json["ratio"] = number(*step.options.ratio);
+  if (step.options.duration) json["duration_s"] = number(step.options.duration->value());
+  if (step.options.listening_db_spl) {
+    json["listening_db_spl"] = number(*step.options.listening_db_spl);
+  }
   return json;
 }
 
 }  // namespace
 
 Plan parse_plan(const std::string& text, const std::string& origin,
-                const std::vector<std::string>& known_methods) {
+                const std::vector<MethodNeeds>& known_methods) {
   const nlohmann::json json = parse_json(text, origin);
   const JsonFields fields(json, origin);
   if (fields.has("format") || fields.has("version")) fields.check_format(kFormat, kNewestVersion);
   fields.allow_only({"format", "version", "name", "ladder", "steps", "orders", "block_s", "blocks",
                      "longest_time_constant_s", "settle_limit_s", "warm_up_s",
-                     "wanted_uncertainty_db", "stop", "ceiling", "fit_frequency_hz"});
+                     "wanted_uncertainty_db", "wanted_harmonic_u_db", "wanted_orders", "descend",
+                     "stop", "ceiling", "fit_frequency_hz"});
   Plan plan;
   plan.name = fields.text("name");
   if (plan.name.empty()) fields.refuse("name", "found \"\"; expected a name");
@@ -262,6 +317,9 @@ std::string plan_json(const Plan& plan) {
       {"settle_limit_s", number(plan.settle_limit.value())},
       {"warm_up_s", number(plan.warm_up.value())},
       {"wanted_uncertainty_db", number(plan.wanted_uncertainty.value())},
+      {"wanted_harmonic_u_db", number(plan.wanted_harmonic_u.value())},
+      {"wanted_orders", plan.wanted_orders},
+      {"descend", plan.descend},
   };
   for (const StepPlan& step : plan.steps) json["steps"].push_back(json_of(step));
   if (plan.stop_thd_f_percent) json["stop"]["thd_f_percent"] = number(*plan.stop_thd_f_percent);

@@ -7,6 +7,7 @@
 #include <string>
 #include <vector>
 
+#include "curve/step_options.h"
 #include "quantity/level.h"
 
 namespace kneeprint {
@@ -26,8 +27,10 @@ struct LadderPlan {
 };
 
 struct StepPlan {
-  std::string method;              ///< registry id: "steady", "smpte", "ccif"
-  std::vector<Hertz> frequencies;  ///< steady: one take each; two-tone methods: empty
+  std::string method;              ///< registry id: "steady", "smpte", "ccif", ...
+  std::vector<Hertz> frequencies;  ///< one take each; methods that fix their tones: empty
+  int every = 1;                   ///< played at every so many-th rung, counted from the lowest
+  StepOptions options{};
 };
 
 struct Plan {
@@ -42,6 +45,11 @@ struct Plan {
   Seconds settle_limit{4.0};
   Seconds warm_up{0.0};  ///< idle time before the first take on a live rig
   Decibels wanted_uncertainty{0.01};
+  /// Expanded uncertainty wanted of harmonics 2 .. wanted_orders; a take is held longer, up to
+  /// settle_limit, until it is reached. 0: not asked for.
+  Decibels wanted_harmonic_u{0.0};
+  int wanted_orders = 5;
+  bool descend = false;  ///< after the top, the steady steps again on the way down
   std::optional<double> stop_thd_f_percent;  ///< the ladder ends after the rung that reaches it
   std::optional<Decibels> stop_compression;  ///< same, against the lowest usable rung
   std::optional<PlanLevel> ceiling;          ///< a rung above it is not played
@@ -53,11 +61,11 @@ struct Plan {
 std::vector<std::string> built_in_plans();
 /// A built-in name, else a file. Throws InputError: no such plan (lists the built-in names), not
 /// JSON (line and column), an unknown or missing field, a wrong type, a negative or impossible
-/// value; names file, field, what was found and what was expected. Methods are checked against
+/// value; names file, field, what was found and what was expected. Steps are checked against
 /// `known_methods`.
-Plan load_plan(const std::string& name_or_file, const std::vector<std::string>& known_methods);
+Plan load_plan(const std::string& name_or_file, const std::vector<MethodNeeds>& known_methods);
 Plan parse_plan(const std::string& json, const std::string& origin,
-                const std::vector<std::string>& known_methods);
+                const std::vector<MethodNeeds>& known_methods);
 /// Canonical text: equal plans give equal bytes.
 std::string plan_json(const Plan& plan);
 

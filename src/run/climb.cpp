@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <chrono>
 #include <cmath>
+#include <map>
 #include <thread>
 
 #include "platform/os.h"
@@ -72,15 +73,17 @@ class Climb {
   void open_folder();
   void warm_up();
   void check_chain();
-  TakeVerdict take(const TakeSpec& first, int number);
-  TakeVerdict play(TakeSpec spec, int number, std::vector<Waveform>& response, int& attempts);
+  TakeVerdict take(const TakeSpec& first);
+  TakeVerdict play(const TakeSpec& spec, std::vector<Waveform>& response, int& attempts);
   std::vector<Waveform> record(const Waveform& stimulus, std::size_t tail, int number);
-  void announce(const TakeSpec& spec, int number);
-  std::optional<ClimbEnd> plan_says_stop(const std::vector<TakeVerdict>& verdicts,
-                                         std::size_t rung);
+  void announce(const TakeSpec& spec);
+  std::optional<ClimbEnd> climb_up(std::size_t& highest);
+  void play_all(const std::vector<TakeSpec>& specs);
+  std::optional<ClimbEnd> plan_says_stop(const TakeSpec& spec, const TakeVerdict& verdict);
   ClimbEnd finish(ClimbEnd end);
   std::string drive_text(LevelDbfs send) const;
-  Seconds duration_of(std::size_t rung) const;
+  Seconds duration_of(const TakeSpec& spec);
+  void plan_duration();
 
   const MeasureRequest& request_;
   Port& port_;
@@ -91,9 +94,22 @@ class Climb {
   Guard guard_;
   Journal kept_;
   ChainCheck chain_;
-  double return_peak_ = -240.0;                     // dBFS, of the hottest take so far
-  std::vector<std::optional<double>> lowest_gain_;  // dB, per take of a rung
+  double return_peak_ = -240.0;                // dBFS, of the hottest take so far
+  std::map<std::string, double> lowest_gain_;  // dB, by what is played
+  std::map<std::string, int> next_hold_;       // blocks that the rung below needed
+  std::map<std::string, Seconds> durations_;
+  int takes_ = 0, begun_ = 0;
+  Seconds left_{0.0};
 };
+
+struct Cancelled {};
+
+// What is played, whatever its level.
+std::string kind_of(const TakeSpec& spec) {
+  std::string kind = fmt::format("{} {:g} Hz", spec.method, spec.asked.value());
+  for (const Hertz f : spec.options.tones) kind += fmt::format(" {:g}", f.value());
+  return kind;
+}
 
 std::string Climb::drive_text(LevelDbfs send) const {
   const LevelScale scale = view_of(request_.rig).send;
@@ -172,31 +188,46 @@ void Climb::check_chain() {
   folder_.keep_take(line, recorded);
 }
 
-Seconds Climb::duration_of(std::size_t rung) const {
-  Seconds sum{0.0};
-  for (const TakeSpec& spec :
-       takes_of_rung(request_.plan, request_.rig, ladder_.rungs[rung], static_cast<int>(rung))) {
-    sum = sum + find_method(spec.method)->stimulus(spec, request_.rig.rate).wave.duration();
+Seconds Climb::duration_of(const TakeSpec& spec) {
+  const std::string kind = kind_of(spec);
+  if (!durations_.contains(kind)) {
+    durations_[kind] = find_method(spec.method)->stimulus(spec, request_.rig.rate).wave.duration();
   }
-  return sum;
+  return durations_[kind];
 }
 
-void Climb::announce(const TakeSpec& spec, int number) {
-  const auto rungs = static_cast<int>(ladder_.rungs.size());
-  const int each = takes_per_rung(request_.plan);
+void Climb::plan_duration() {
+  const auto add = [&](const std::vector<TakeSpec>& specs) {
+    for (const TakeSpec& spec : specs) left_ = left_ + duration_of(spec);
+    takes_ += static_cast<int>(specs.size());
+  };
+  const auto& rungs = ladder_.rungs;
+  const int top = static_cast<int>(rungs.size()) - 1;
+  add(takes_aside(request_.plan, request_.rig, Placement::before_ladder, rungs.front(), 0));
+  for (int rung = 0; rung <= top; ++rung) {
+    const LevelDbfs send = rungs[static_cast<std::size_t>(rung)];
+    add(takes_of_rung(request_.plan, request_.rig, send, rung));
+    if (request_.plan.descend && rung < top) {
+      add(takes_of_rung(request_.plan, request_.rig, send, rung, true));
+    }
+  }
+  add(takes_aside(request_.plan, request_.rig, Placement::after_ladder, rungs.back(), top));
+}
+
+void Climb::announce(const TakeSpec& spec) {
   ProgressStep step;
-  step.take = number;
-  step.takes = rungs * each;
+  step.take = begun_;
+  step.takes = takes_;
   step.what = spec.asked.value() > 0.0 ? fmt::format("{} {:g} Hz", spec.method, spec.asked.value())
                                        : spec.method;
   step.drive = drive_text(spec.send);
-  const double rung_s = duration_of(static_cast<std::size_t>(spec.rung)).value();
-  step.left = Seconds(rung_s * static_cast<double>(step.takes - number + 1) / each);
+  step.left = left_;
   progress_.step(step);
 }
 
 // Plays until a take is whole: at most three times when the driver or the take itself shows a loss.
-TakeVerdict Climb::play(TakeSpec spec, int number, std::vector<Waveform>& response, int& attempts) {
+TakeVerdict Climb::play(const TakeSpec& spec, std::vector<Waveform>& response, int& attempts) {
+  const int number = spec.number;
   const Hertz rate = request_.rig.rate;
   const Stimulus stimulus = find_method(spec.method)->stimulus(spec, rate);
   const long delay = std::lround(chain_.delay);
@@ -240,70 +271,88 @@ TakeVerdict Climb::play(TakeSpec spec, int number, std::vector<Waveform>& respon
       number, kMostAttempts));
 }
 
-TakeVerdict Climb::take(const TakeSpec& first, int number) {
-  const auto line = std::find_if(kept_.takes.begin(), kept_.takes.end(),
-                                 [&](const JournalTake& t) { return t.number == number; });
-  if (line != kept_.takes.end()) {
-    Curves unused;
-    return_peak_ = std::max(return_peak_, peak_dbfs(folder_.load_take(*line).front()));
-    return read_take(folder_, *line, request_.plan, request_.rig, unused);
-  }
+// Blocks for the next attempt: a unit that has not settled gets twice the time, one that has as
+// much as its uncertainty still lacks.
+int longer_hold(int blocks, const TakeVerdict& verdict, int most) {
+  const double factor = !verdict.settled ? 2.0 : std::max(1.0, verdict.longer.value_or(1.0));
+  const double wanted = std::ceil(blocks * factor - 1e-9);
+  return wanted >= most ? most : static_cast<int>(wanted);
+}
+
+TakeVerdict Climb::take(const TakeSpec& first) {
+  ++begun_;
+  const std::string kind = kind_of(first);
   const Method& method = *find_method(first.method);
   const Seconds block = method.block_length(first, request_.rig.rate);
   const int most = std::max(
       first.hold_blocks,
       static_cast<int>(std::floor(request_.plan.settle_limit.value() / block.value() + 1e-9)));
-  TakeSpec spec = first;
-  JournalTake kept;
-  kept.started = os::utc_now();
-  std::vector<Waveform> response;
+  const Seconds planned = duration_of(first);
   TakeVerdict verdict;
-  while (true) {
-    announce(spec, number);
-    verdict = play(spec, number, response, kept.attempts);
-    if (verdict.settled || spec.hold_blocks >= most) break;
-    spec.hold_blocks = std::min(2 * spec.hold_blocks, most);
+  int played = 0;
+  const auto line = std::find_if(kept_.takes.begin(), kept_.takes.end(),
+                                 [&](const JournalTake& t) { return t.number == first.number; });
+  if (line != kept_.takes.end()) {
+    Curves unused;
+    return_peak_ = std::max(return_peak_, peak_dbfs(folder_.load_take(*line).front()));
+    verdict = read_take(folder_, *line, request_.plan, request_.rig, unused);
+    played = static_cast<int>(std::lround(line->hold_s / block.value()));
+  } else {
+    TakeSpec spec = first;
+    // The rung below says how long this one will need: harmonics grow with drive, noise does not.
+    if (const auto it = next_hold_.find(kind); it != next_hold_.end()) {
+      spec.hold_blocks = std::clamp(it->second, first.hold_blocks, most);
+    }
+    JournalTake kept;
+    kept.started = os::utc_now();
+    std::vector<Waveform> response;
+    while (true) {
+      announce(spec);
+      verdict = play(spec, response, kept.attempts);
+      const int next = longer_hold(spec.hold_blocks, verdict, most);
+      if (next <= spec.hold_blocks) break;
+      spec.hold_blocks = next;
+    }
+    played = spec.hold_blocks;
+    kept.number = spec.number;
+    kept.method = spec.method;
+    kept.frequency_hz = spec.asked.value();
+    kept.rung = spec.rung;
+    kept.send_dbfs = spec.send.value();
+    kept.hold_s = spec.hold_blocks * block.value();
+    kept.delay_samples = chain_.delay - static_cast<double>(std::lround(chain_.delay));
+    kept.ended = os::utc_now();
+    return_peak_ = std::max(return_peak_, peak_dbfs(response.front()));
+    folder_.keep_take(kept, response);
   }
-  kept.number = number;
-  kept.method = spec.method;
-  kept.frequency_hz = spec.asked.value();
-  kept.rung = spec.rung;
-  kept.send_dbfs = spec.send.value();
-  kept.hold_s = spec.hold_blocks * block.value();
-  kept.delay_samples = chain_.delay - static_cast<double>(std::lround(chain_.delay));
-  kept.ended = os::utc_now();
-  return_peak_ = std::max(return_peak_, peak_dbfs(response.front()));
-  folder_.keep_take(kept, response);
+  // Less is tried when the rung below reached its uncertainty with time to spare.
+  if (verdict.settled && verdict.longer) {
+    next_hold_[kind] = static_cast<int>(std::ceil(played * *verdict.longer - 1e-9));
+  }
+  left_ = std::max(Seconds(0.0), left_ - planned);
   return verdict;
 }
 
-std::optional<ClimbEnd> Climb::plan_says_stop(const std::vector<TakeVerdict>& verdicts,
-                                              std::size_t rung) {
+std::optional<ClimbEnd> Climb::plan_says_stop(const TakeSpec& spec, const TakeVerdict& verdict) {
   const Plan& plan = request_.plan;
-  lowest_gain_.resize(verdicts.size());
-  for (std::size_t i = 0; i < verdicts.size(); ++i) {
-    const TakeVerdict& v = verdicts[i];
-    if (plan.stop_thd_f_percent && v.thd_f_percent &&
-        *v.thd_f_percent >= *plan.stop_thd_f_percent) {
-      return ClimbEnd{
-          "thd",
-          fmt::format("the ladder ends at {}: THD_F has reached {:.3g} % (the plan stops at "
-                      "{:g} %)",
-                      drive_text(ladder_.rungs[rung]), *v.thd_f_percent, *plan.stop_thd_f_percent),
-          false};
-    }
-    if (!v.output_level) continue;
-    const double gain = *v.output_level - ladder_.rungs[rung].value();
-    if (!lowest_gain_[i]) lowest_gain_[i] = gain;
-    const double compression = *lowest_gain_[i] - gain;
-    if (plan.stop_compression && compression >= plan.stop_compression->value()) {
-      return ClimbEnd{
-          "compression",
-          fmt::format("the ladder ends at {}: compression has reached {:.2f} dB (the plan "
-                      "stops at {:g} dB)",
-                      drive_text(ladder_.rungs[rung]), compression, plan.stop_compression->value()),
-          false};
-    }
+  if (plan.stop_thd_f_percent && verdict.thd_f_percent &&
+      *verdict.thd_f_percent >= *plan.stop_thd_f_percent) {
+    return ClimbEnd{
+        "thd",
+        fmt::format("the ladder ends at {}: THD_F has reached {:.3g} % (the plan stops at {:g} %)",
+                    drive_text(spec.send), *verdict.thd_f_percent, *plan.stop_thd_f_percent),
+        false};
+  }
+  if (!verdict.output_level) return std::nullopt;
+  const double gain = *verdict.output_level - spec.send.value();
+  const double lowest = lowest_gain_.try_emplace(kind_of(spec), gain).first->second;
+  if (plan.stop_compression && lowest - gain >= plan.stop_compression->value()) {
+    return ClimbEnd{
+        "compression",
+        fmt::format("the ladder ends at {}: compression has reached {:.2f} dB (the plan stops at "
+                    "{:g} dB)",
+                    drive_text(spec.send), lowest - gain, plan.stop_compression->value()),
+        false};
   }
   return std::nullopt;
 }
@@ -316,38 +365,63 @@ ClimbEnd Climb::finish(ClimbEnd end) {
   return end;
 }
 
+void Climb::play_all(const std::vector<TakeSpec>& specs) {
+  for (const TakeSpec& spec : specs) {
+    if (os::interrupted()) throw Cancelled{};
+    take(spec);
+  }
+}
+
+// Rung by rung until the top, or until the return would be too hot or the plan has seen enough.
+std::optional<ClimbEnd> Climb::climb_up(std::size_t& highest) {
+  for (std::size_t rung = 0; rung < ladder_.rungs.size(); ++rung) {
+    const LevelDbfs send = ladder_.rungs[rung];
+    if (rung > 0) {
+      const LevelDbfs expected = LevelDbfs(return_peak_) + (send - ladder_.rungs[rung - 1]);
+      if (expected > kReturnRoom) {
+        return ClimbEnd{
+            "return-hot",
+            fmt::format("stopped below {}: the return would reach {:.1f} dBFS. Turn the "
+                        "input gain down or put a pad before the return to go further.",
+                        drive_text(send), expected.value()),
+            true};
+      }
+    }
+    std::optional<ClimbEnd> end;
+    for (const TakeSpec& spec :
+         takes_of_rung(request_.plan, request_.rig, send, static_cast<int>(rung))) {
+      if (os::interrupted()) throw Cancelled{};
+      const TakeVerdict verdict = take(spec);
+      if (!end) end = plan_says_stop(spec, verdict);
+    }
+    highest = rung;
+    const bool at_top = rung + 1 == ladder_.rungs.size();  // nothing is left to stop
+    if (end && !at_top) return end;
+  }
+  return std::nullopt;
+}
+
 ClimbEnd Climb::run() {
   open_folder();
+  std::optional<ClimbEnd> end;
   try {
     warm_up();
     check_chain();
-    for (std::size_t rung = 0; rung < ladder_.rungs.size(); ++rung) {
-      const LevelDbfs send = ladder_.rungs[rung];
-      if (rung > 0) {
-        const Decibels step = send - ladder_.rungs[rung - 1];
-        const LevelDbfs expected = LevelDbfs(return_peak_) + step;
-        if (expected > kReturnRoom) {
-          return finish(
-              {"return-hot",
-               fmt::format("stopped below {}: the return would reach {:.1f} dBFS. Turn the "
-                           "input gain down or put a pad before the return to go further.",
-                           drive_text(send), expected.value()),
-               true});
-        }
-      }
-      std::vector<TakeVerdict> verdicts;
-      const auto specs = takes_of_rung(request_.plan, request_.rig, send, static_cast<int>(rung));
-      for (std::size_t i = 0; i < specs.size(); ++i) {
-        if (os::interrupted()) {
-          return finish(
-              {"cancelled", "stopped by hand; what was taken is kept (--resume goes on)", true});
-        }
-        verdicts.push_back(take(
-            specs[i], take_number(request_.plan, static_cast<int>(rung), static_cast<int>(i))));
-      }
-      if (rung + 1 == ladder_.rungs.size()) break;  // the top: nothing is left to stop
-      if (auto end = plan_says_stop(verdicts, rung)) return finish(*end);
+    plan_duration();
+    const Plan& plan = request_.plan;
+    play_all(takes_aside(plan, request_.rig, Placement::before_ladder, ladder_.rungs.front(), 0));
+    std::size_t highest = 0;
+    end = climb_up(highest);
+    if (end && end->by_guard) return finish(*end);
+    for (std::size_t rung = highest; plan.descend && rung-- > 0;) {
+      play_all(
+          takes_of_rung(plan, request_.rig, ladder_.rungs[rung], static_cast<int>(rung), true));
     }
+    play_all(takes_aside(plan, request_.rig, Placement::after_ladder, ladder_.rungs[highest],
+                         static_cast<int>(highest)));
+  } catch (const Cancelled&) {
+    return finish(
+        {"cancelled", "stopped by hand; what was taken is kept (--resume goes on)", true});
   } catch (const GuardStop& stop) {
     return finish(
         {guard_.reason() == GuardReason::none ? "return-hot" : std::string(name(guard_.reason())),
@@ -356,6 +430,7 @@ ClimbEnd Climb::run() {
     folder_.keep_stop({"device", failure.what(), os::utc_now()});
     throw;
   }
+  if (end) return finish(*end);
   if (ladder_.cut_by_ceiling) {
     return finish({"ceiling",
                    fmt::format("the ladder ends at the ceiling of {}", drive_text(ceiling_)),

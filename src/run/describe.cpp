@@ -41,7 +41,19 @@ FitDatum datum_of(const HarmonicPoint& p, double input, double fundamental) {
   return d;
 }
 
-HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const RigView& view) {
+// The options of the step that played these tones.
+StepOptions options_of(const Plan& plan, const IntermodPoint& p) {
+  for (const StepPlan& step : plan.steps) {
+    if (step.method == p.method &&
+        step.options.tones == std::vector{Hertz(p.f1_hz), Hertz(p.f2_hz)}) {
+      return step.options;
+    }
+  }
+  return {};
+}
+
+HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const Plan& plan,
+                       const RigView& view) {
   HoldoutFamily result;
   result.family = fitted.family->id;
   const SigmoidParameters at = fitted.point();
@@ -51,14 +63,15 @@ HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const R
     return two_tone_products(curve, u1, u2, wanted);
   };
   double squares = 0.0;
-  std::string method;
-  double drive = NAN;
+  const IntermodPoint* take = nullptr;  // whose products are predicted
   std::vector<PredictedProduct> predicted;
   for (const IntermodPoint& p : curves.intermods) {
-    if (p.method != method || p.drive != drive) {
-      method = p.method;
-      drive = p.drive;
-      predicted = find_method(method)->predict(products, input_peak(view, drive));
+    const Method& method = *find_method(p.method);
+    if (method.predict == nullptr) continue;
+    if (take == nullptr || p.method != take->method || p.drive != take->drive ||
+        p.f1_hz != take->f1_hz || p.f2_hz != take->f2_hz) {
+      take = &p;
+      predicted = method.predict(products, options_of(plan, p), input_peak(view, p.drive));
     }
     const auto it = std::find_if(predicted.begin(), predicted.end(),
                                  [&](const PredictedProduct& q) { return q.product == p.product; });
@@ -111,7 +124,7 @@ Model describe(const Curves& curves, const Plan& plan, const Rig& rig) {
   model.frequency_dependent = dependent.value_or(false);
   if (!curves.intermods.empty()) {
     for (const FittedFamily& f : model.fit.families) {
-      model.holdout.push_back(hold_out(f, curves, view));
+      model.holdout.push_back(hold_out(f, curves, plan, view));
     }
   }
   return model;

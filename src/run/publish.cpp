@@ -25,7 +25,8 @@ Opened open(const std::filesystem::path& path) {
   if (!folder.exists()) {
     throw InputError(fmt::format("{}: no kneeprint here (no journal.jsonl)", path.string()));
   }
-  Plan plan = parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_ids());
+  Plan plan =
+      parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_needs());
   return {folder, plan, read_rig(folder.rig_file()), read_journal(folder.journal_file(), false)};
 }
 
@@ -34,10 +35,9 @@ Opened open(const std::filesystem::path& path) {
 int analyse_folder(const std::filesystem::path& path) {
   const Opened o = open(path);
   const Curves curves = read_takes(o.folder, o.journal, o.plan, o.rig);
-  o.folder.write_result(o.folder.curves() / "levels.csv", levels_csv(curves));
-  o.folder.write_result(o.folder.curves() / "harmonics.csv", harmonics_csv(curves));
-  o.folder.write_result(o.folder.curves() / "intermod.csv", intermod_csv(curves));
-  o.folder.write_result(o.folder.curves() / "response.csv", response_csv(curves));
+  for (const CsvTable& table : csv_tables()) {
+    o.folder.write_result(o.folder.curves() / table.file, table.text(curves));
+  }
   int takes = 0;
   for (const JournalTake& t : o.journal.takes) takes += t.rung >= 0;
   return takes;

@@ -26,13 +26,20 @@ ReelPlan reel_plan(const Plan& plan, const Rig& rig, LevelDbfs ceiling) {
   ReelPlan out;
   const Ladder ladder = ladder_of(plan, rig, ceiling);
   std::vector<std::size_t> lengths;
-  for (std::size_t rung = 0; rung < ladder.rungs.size(); ++rung) {
-    for (const TakeSpec& spec :
-         takes_of_rung(plan, rig, ladder.rungs[rung], static_cast<int>(rung))) {
+  const auto add = [&](const std::vector<TakeSpec>& specs) {
+    for (const TakeSpec& spec : specs) {
       out.specs.push_back(spec);
       lengths.push_back(find_method(spec.method)->stimulus(spec, rig.rate).wave.samples.size());
     }
+  };
+  const int top = static_cast<int>(ladder.rungs.size()) - 1;
+  const auto level = [&](int rung) { return ladder.rungs[static_cast<std::size_t>(rung)]; };
+  add(takes_aside(plan, rig, Placement::before_ladder, level(0), 0));
+  for (int rung = 0; rung <= top; ++rung) add(takes_of_rung(plan, rig, level(rung), rung));
+  for (int rung = top - 1; plan.descend && rung >= 0; --rung) {
+    add(takes_of_rung(plan, rig, level(rung), rung, true));
   }
+  add(takes_aside(plan, rig, Placement::after_ladder, level(top), top));
   out.layout = lay_out(lengths, rig.rate);
   return out;
 }
@@ -73,7 +80,7 @@ void ingest_reel(const std::filesystem::path& path, const std::filesystem::path&
                                  path.string()));
   }
   const Plan plan =
-      parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_ids());
+      parse_plan(read_text(folder.plan_file()), folder.plan_file().string(), method_needs());
   Rig rig = read_rig(folder.rig_file());
   if (rig.kind != RigKind::reel) {
     throw InputError(
@@ -98,7 +105,7 @@ void ingest_reel(const std::filesystem::path& path, const std::filesystem::path&
   for (std::size_t i = 0; i < reel.specs.size(); ++i) {
     const TakeSpec& spec = reel.specs[i];
     JournalTake take;
-    take.number = static_cast<int>(i) + 1;
+    take.number = spec.number;
     take.method = spec.method;
     take.frequency_hz = spec.asked.value();
     take.rung = spec.rung;

@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <vector>
 
 #include "quantity/failure.h"
 
@@ -12,8 +13,62 @@ namespace kneeprint {
 namespace {
 
 TakeSettings settings_of(const Plan& plan) {
-  return {plan.orders, plan.block, plan.blocks, plan.longest_time_constant,
-          plan.wanted_uncertainty};
+  return {plan.orders,
+          plan.block,
+          plan.blocks,
+          plan.longest_time_constant,
+          plan.wanted_uncertainty,
+          plan.wanted_harmonic_u,
+          plan.wanted_orders};
+}
+
+/// One take for every step and frequency, in the plan's order.
+struct Slot {
+  const StepPlan* step;
+  const Method* method;
+  Hertz asked{0.0};
+};
+
+std::vector<Slot> slots_of(const Plan& plan, Placement placement) {
+  std::vector<Slot> slots;
+  for (const StepPlan& step : plan.steps) {
+    const Method* method = find_method(step.method);
+    if (method->placement != placement) continue;
+    if (step.frequencies.empty()) slots.push_back({&step, method, Hertz(0.0)});
+    for (const Hertz f : step.frequencies) slots.push_back({&step, method, f});
+  }
+  return slots;
+}
+
+int count_of(const Plan& plan, Placement placement) {
+  return static_cast<int>(slots_of(plan, placement).size());
+}
+
+TakeSpec spec_of_slot(const Slot& slot, const Plan& plan, const Rig& rig, LevelDbfs send,
+                      int rung) {
+  TakeSpec spec;
+  spec.method = slot.step->method;
+  spec.asked = slot.asked;
+  spec.send = send;
+  spec.rung = rung;
+  spec.settings = settings_of(plan);
+  spec.options = slot.step->options;
+  spec.lowest = std::min(send, send_level(plan.ladder.from, rig, "ladder.from"));
+  spec.hold_blocks = slot.method->first_hold_blocks(spec, rig.rate);
+  return spec;
+}
+
+bool is_taken_down(const Slot& slot) { return slot.step->method == "steady"; }
+
+int aside_base(const Plan& plan, Placement placement) {
+  return placement == Placement::before_ladder ? 1 : 1 + count_of(plan, Placement::before_ladder);
+}
+
+int rung_base(const Plan& plan, int rung, bool down) {
+  const int each = count_of(plan, Placement::every_rung);
+  const int asides =
+      count_of(plan, Placement::before_ladder) + count_of(plan, Placement::after_ladder);
+  return 1 + asides + rung * each * (plan.descend ? 2 : 1) + (down ? each : 0);
 }
 
 }  // namespace
@@ -97,36 +152,59 @@ Ladder ladder_of(const Plan& plan, const Rig& rig, LevelDbfs ceiling) {
   return ladder;
 }
 
-std::vector<TakeSpec> takes_of_rung(const Plan& plan, const Rig& rig, LevelDbfs send, int rung) {
+std::vector<TakeSpec> takes_of_rung(const Plan& plan, const Rig& rig, LevelDbfs send, int rung,
+                                    bool down) {
   std::vector<TakeSpec> takes;
-  const auto add = [&](const std::string& method, Hertz asked) {
-    TakeSpec spec{method, asked, send, rung, 0, settings_of(plan)};
-    spec.hold_blocks = find_method(method)->first_hold_blocks(spec, rig.rate);
-    takes.push_back(spec);
-  };
-  for (const StepPlan& step : plan.steps) {
-    if (step.frequencies.empty()) add(step.method, Hertz(0.0));
-    for (const Hertz f : step.frequencies) add(step.method, f);
+  int number = rung_base(plan, rung, down) - 1;
+  for (const Slot& slot : slots_of(plan, Placement::every_rung)) {
+    ++number;
+    if (rung % slot.step->every != 0 || (down && !is_taken_down(slot))) continue;
+    takes.push_back(spec_of_slot(slot, plan, rig, send, rung));
+    takes.back().number = number;
+    takes.back().down = down;
   }
   return takes;
 }
 
-int takes_per_rung(const Plan& plan) {
-  int count = 0;
-  for (const StepPlan& step : plan.steps) {
-    count += std::max(1, static_cast<int>(step.frequencies.size()));
+std::vector<TakeSpec> takes_aside(const Plan& plan, const Rig& rig, Placement placement,
+                                  LevelDbfs send, int rung) {
+  std::vector<TakeSpec> takes;
+  int number = aside_base(plan, placement);
+  for (const Slot& slot : slots_of(plan, placement)) {
+    takes.push_back(spec_of_slot(slot, plan, rig, send, rung));
+    takes.back().number = number++;
   }
-  return count;
+  return takes;
 }
 
-int take_number(const Plan& plan, int rung, int index) {
-  return 1 + rung * takes_per_rung(plan) + index;
+std::optional<TakeSpec> take_by_number(const Plan& plan, const Rig& rig, int number, LevelDbfs send,
+                                       int rung) {
+  const auto among = [&](int base, Placement placement) -> std::optional<TakeSpec> {
+    const std::vector<Slot> slots = slots_of(plan, placement);
+    const int index = number - base;
+    if (index < 0 || index >= static_cast<int>(slots.size())) return std::nullopt;
+    TakeSpec spec = spec_of_slot(slots[static_cast<std::size_t>(index)], plan, rig, send, rung);
+    spec.number = number;
+    return spec;
+  };
+  for (const Placement aside : {Placement::before_ladder, Placement::after_ladder}) {
+    if (auto spec = among(aside_base(plan, aside), aside)) return spec;
+  }
+  for (const bool down : {false, true}) {
+    if (down && !plan.descend) break;
+    if (auto spec = among(rung_base(plan, rung, down), Placement::every_rung)) {
+      spec->down = down;
+      return spec;
+    }
+  }
+  return std::nullopt;
 }
 
 double fit_frequency(const Plan& plan) {
   if (plan.fit_frequency) return plan.fit_frequency->value();
   double best = 0.0;
   for (const StepPlan& step : plan.steps) {
+    if (step.method != "steady") continue;
     for (const Hertz f : step.frequencies) {
       const auto octaves = [](double g) { return std::abs(std::log2(g / 997.0)); };
       if (best == 0.0 || octaves(f.value()) < octaves(best)) best = f.value();
@@ -139,7 +217,9 @@ void check_rate(const Plan& plan, Hertz rate) {
   constexpr double kHighestTone = 0.4535;  // what a converter's half-band filter passes
   const double top = kHighestTone * rate.value();
   for (const StepPlan& step : plan.steps) {
-    for (const Hertz f : step.frequencies) {
+    std::vector<Hertz> tones = step.frequencies;
+    tones.insert(tones.end(), step.options.tones.begin(), step.options.tones.end());
+    for (const Hertz f : tones) {
       if (f.value() > top) {
         throw InputError(fmt::format(
             "plan: {} Hz cannot be played at a sample rate of {} Hz (at most {:.0f} Hz): lower the "

@@ -2,6 +2,7 @@
 // A plan on a given rig becomes rungs and takes.
 #pragma once
 
+#include <optional>
 #include <string>
 #include <vector>
 
@@ -30,12 +31,20 @@ struct Ladder {
 /// Throws InputError when not one rung is under the ceiling.
 Ladder ladder_of(const Plan& plan, const Rig& rig, LevelDbfs ceiling);
 
-/// The takes of one rung, in order, each with its first hold.
-std::vector<TakeSpec> takes_of_rung(const Plan& plan, const Rig& rig, LevelDbfs send, int rung);
+/// The takes of one rung, in order, each with its first hold and its number. `down`: those that are
+/// taken again on the way down.
+std::vector<TakeSpec> takes_of_rung(const Plan& plan, const Rig& rig, LevelDbfs send, int rung,
+                                    bool down = false);
+/// The takes before the ladder (at its lowest rung) or after it (at the highest rung reached).
+std::vector<TakeSpec> takes_aside(const Plan& plan, const Rig& rig, Placement placement,
+                                  LevelDbfs send, int rung);
 
-/// Number of the take in the journal; 0 is the chain check.
-int take_number(const Plan& plan, int rung, int index);
-int takes_per_rung(const Plan& plan);
+/// The spec behind a take's number, at the level and rung that the journal tells. Empty: no take of
+/// this plan has that number. Numbers do not depend on where the ladder ended: 0 is the chain
+/// check, then follow the takes before and after the ladder, then rung by rung those on the way up
+/// and, when the plan descends, down.
+std::optional<TakeSpec> take_by_number(const Plan& plan, const Rig& rig, int number, LevelDbfs send,
+                                       int rung);
 
 /// The steady frequency that the fit uses: the plan's own, else the one nearest to 997 Hz (0:
 /// none).

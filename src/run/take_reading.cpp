@@ -11,17 +11,18 @@
 namespace kneeprint {
 
 TakeSpec spec_of(const JournalTake& take, const Plan& plan, const Rig& rig) {
-  for (TakeSpec spec : takes_of_rung(plan, rig, LevelDbfs(take.send_dbfs), take.rung)) {
-    if (spec.method != take.method || spec.asked.value() != take.frequency_hz) continue;
-    const Seconds block = find_method(spec.method)->block_length(spec, rig.rate);
-    spec.hold_blocks = static_cast<int>(std::lround(take.hold_s / block.value()));
-    return spec;
+  std::optional<TakeSpec> spec =
+      take_by_number(plan, rig, take.number, LevelDbfs(take.send_dbfs), take.rung);
+  if (!spec || spec->method != take.method || spec->asked.value() != take.frequency_hz) {
+    throw InputError(
+        fmt::format("journal.jsonl: take {} ({}, {} Hz) is not one of the plan's: plan.json was "
+                    "changed after the "
+                    "measurement; put the original back",
+                    take.number, take.method, take.frequency_hz));
   }
-  throw InputError(
-      fmt::format("journal.jsonl: take {} ({}, {} Hz) is not one of the plan's: plan.json was "
-                  "changed after the "
-                  "measurement; put the original back",
-                  take.number, take.method, take.frequency_hz));
+  const Seconds block = find_method(spec->method)->block_length(*spec, rig.rate);
+  spec->hold_blocks = static_cast<int>(std::lround(take.hold_s / block.value()));
+  return *spec;
 }
 
 TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
@@ -48,7 +49,7 @@ Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan&
   for (const JournalTake& take : journal.takes) {
     if (take.rung >= 0) read_take(folder, take, plan, rig, curves);
   }
-  if (curves.levels.empty() && curves.intermods.empty()) {
+  if (curves.empty()) {
     throw NothingUsable(fmt::format(
         "{}: no take of the ladder was kept, so there is nothing to read", folder.path().string()));
   }

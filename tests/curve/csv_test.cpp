@@ -3,6 +3,7 @@
 
 #include <doctest/doctest.h>
 
+#include <algorithm>
 #include <cmath>
 #include <limits>
 #include <random>
@@ -49,6 +50,15 @@ Curves any_curves(int rows) {
                            any.cell()});
     c.responses.push_back(
         {any(), any(), any.unit(), any.whole(), any.cell(), any.cell(), any.cell(), any.flag()});
+    c.products.push_back({"smpte", any(), any(), any(), any.unit(), any.whole(), any.whole(),
+                          any.whole(), any(), any.cell(), any.cell(), any.cell(), any.cell(),
+                          any.flag(), "falls on 2f2-f1"});
+    c.glides.push_back({any(), i % 2 == 0 ? "up" : "down", any(), any.unit(), any.whole(),
+                        any.cell(), any.cell(), any.cell(), any.cell(), any.cell(), any.flag()});
+    c.scalars.push_back({"silence", any.cell(), any.cell(), any.unit(), "noise-a", "-", any.cell(),
+                         "dBu", any.cell(), any.cell(), any.flag()});
+    c.traces.push_back({"burst", any.cell(), any.unit(), "gain", any(), "s", any.cell(), "dB",
+                        any.cell(), any.flag()});
   }
   return c;
 }
@@ -56,12 +66,9 @@ Curves any_curves(int rows) {
 class CurvesFolder {
  public:
   explicit CurvesFolder(const Curves& c) {
-    write("levels.csv", levels_csv(c));
-    write("harmonics.csv", harmonics_csv(c));
-    write("intermod.csv", intermod_csv(c));
-    write("response.csv", response_csv(c));
+    for (const CsvTable& table : csv_tables()) write(table.file, table.text(c));
   }
-  void write(const char* name, const std::string& text) const {
+  void write(std::string_view name, const std::string& text) const {
     testing::write_bytes(path() / name, text);
   }
   const std::filesystem::path& path() const { return folder_.path(); }
@@ -84,7 +91,7 @@ class CurvesFolder {
 };
 
 const char* const kResponseHeader =
-    "frequency_hz,drive,level_unit,order,magnitude_db,phase_deg,expanded_u_db,flag";
+    "frequency_hz,drive,level_unit,order,magnitude_db,phase_deg,expanded_u_db,flag,method";
 
 }  // namespace
 
@@ -94,14 +101,31 @@ TEST_CASE("headers: the columns that scripts rely on, then the further ones") {
         "frequency_hz,drive,level_unit,output,gain_db,gain_u_db,thd_f_percent,thd_r_percent,"
         "thd_orders,thdn_percent,dc,noise,even_odd_db,flag,output_u_db,thd_f_u_percent,"
         "thd_r_u_percent,thdn_u_percent,dc_u,noise_u_db,even_odd_u_db,sinad_db,sinad_u_db,polarity,"
-        "asked_hz,blocks,settled_after_s\n");
+        "asked_hz,blocks,settled_after_s,direction,integration\n");
   CHECK(harmonics_csv(none) ==
         "frequency_hz,drive,level_unit,order,level,relative_db,phase_deg,expanded_u_db,floor_db,"
-        "flag,level_u_db,relative_low_db,relative_high_db,in_phase,quadrature,component_u,dof\n");
+        "flag,level_u_db,relative_low_db,relative_high_db,in_phase,quadrature,component_u,dof,"
+        "direction\n");
   CHECK(intermod_csv(none) ==
         "method,f1_hz,f2_hz,drive,level_unit,product,percent,db,expanded_u_db,floor_db,flag,"
         "am_percent,pm_percent,blocks,settled_after_s\n");
   CHECK(response_csv(none) == std::string(kResponseHeader) + "\n");
+  const auto text = [&](std::string_view file) {
+    const auto tables = csv_tables();
+    return std::find_if(tables.begin(), tables.end(), [&](auto& t) { return t.file == file; })
+        ->text(none);
+  };
+  CHECK(text("products.csv") ==
+        "method,f1_hz,f2_hz,drive,level_unit,k1,k2,order,frequency_hz,level,relative_db,phase_deg,"
+        "expanded_u_db,flag,note\n");
+  CHECK(text("glide.csv") ==
+        "frequency_hz,direction,drive,level_unit,order,level,relative_db,phase_deg,expanded_u_db,"
+        "floor_db,flag\n");
+  CHECK(text("scalars.csv") ==
+        "method,frequency_hz,drive,level_unit,figure,state,value,value_unit,expanded_u,floor,"
+        "flag\n");
+  CHECK(text("traces.csv") ==
+        "method,drive,level_unit,trace,x,x_unit,value,value_unit,expanded_u,flag\n");
 }
 
 TEST_CASE("a row, cell by cell") {
@@ -119,7 +143,7 @@ TEST_CASE("a row, cell by cell") {
   h.component_u = 0.1 + 0.2;
   c.harmonics.push_back(h);
   CHECK(harmonics_csv(c).substr(harmonics_csv({}).size()) ==
-        "997,-10.1,dBu,3,-60.25,-50,180,,,floor,,,,1e-07,0,0.30000000000000004,inf\n");
+        "997,-10.1,dBu,3,-60.25,-50,180,,,floor,,,,1e-07,0,0.30000000000000004,inf,up\n");
 }
 
 TEST_CASE("every double, cell, flag and unit comes back, and the bytes with them") {
@@ -128,7 +152,7 @@ TEST_CASE("every double, cell, flag and unit comes back, and the bytes with them
   CHECK(levels_csv(back) == levels_csv(c));
   CHECK(harmonics_csv(back) == harmonics_csv(c));
   CHECK(intermod_csv(back) == intermod_csv(c));
-  CHECK(response_csv(back) == response_csv(c));
+  for (const CsvTable& table : csv_tables()) CHECK(table.text(back) == table.text(c));
   // Equal bytes would not show two columns bound to one member: compare the members themselves.
   REQUIRE(back.harmonics.size() == 500);
   int different = 0;
@@ -202,29 +226,30 @@ TEST_CASE("a refused table names file, row and column") {
   const auto refusal = [&](const std::string& rows) {
     return folder.refusal("response.csv", std::string(kResponseHeader) + "\n" + rows);
   };
-  const std::string good = "997,-10,dBu,1,0.5,,0.01,floor\n";
+  const std::string good = "997,-10,dBu,1,0.5,,0.01,floor,steady\n";
   CHECK(refusal(good) == "(accepted)");
-  CHECK(refusal(good + "997,-10,dBu,1,0.5,,0.01\n") == "row 3: found 7 cells; expected 8");
-  CHECK(refusal(good + "\n") == "row 3: found 1 cells; expected 8");
-  CHECK(refusal("997,-10,dBu,1,0.5,,0.01,floor,\n") == "row 2: found 9 cells; expected 8");
-  CHECK(refusal(good + "997,loud,dBu,1,0.5,,0.01,\n") ==
+  CHECK(refusal(good + "997,-10,dBu,1,0.5,,0.01,,steady\n") == "row 3: found 8 cells; expected 9");
+  CHECK(refusal(good + "\n") == "row 3: found 1 cells; expected 9");
+  CHECK(refusal("997,-10,dBu,1,0.5,,0.01,floor,steady,\n") == "row 2: found 10 cells; expected 9");
+  CHECK(refusal(good + "997,loud,dBu,1,0.5,,0.01,,steady\n") ==
         "row 3, column 2 \"drive\": found \"loud\"; expected a number");
-  CHECK(refusal("997,,dBu,1,0.5,,0.01,\n") ==
+  CHECK(refusal("997,,dBu,1,0.5,,0.01,,steady\n") ==
         "row 2, column 2 \"drive\": found \"\"; expected a number");
-  CHECK(refusal("997,-10,dBu,1,0.5 dB,,0.01,\n") ==
+  CHECK(refusal("997,-10,dBu,1,0.5 dB,,0.01,,steady\n") ==
         "row 2, column 5 \"magnitude_db\": found \"0.5 dB\"; expected a number or an empty cell");
-  CHECK(refusal("997,-10,dBu,1.5,0.5,,0.01,\n") ==
+  CHECK(refusal("997,-10,dBu,1.5,0.5,,0.01,,steady\n") ==
         "row 2, column 4 \"order\": found \"1.5\"; expected a whole number");
-  CHECK(refusal("997,-10,dBm,1,0.5,,0.01,\n") ==
+  CHECK(refusal("997,-10,dBm,1,0.5,,0.01,,steady\n") ==
         "row 2, column 3 \"level_unit\": found \"dBm\"; expected dBFS or dBu");
-  CHECK(refusal("997,-10,dBu,1,0.5,,0.01,fine\n") ==
+  CHECK(refusal("997,-10,dBu,1,0.5,,0.01,fine,steady\n") ==
         "row 2, column 8 \"flag\": found \"fine\"; expected an empty cell, floor, noise, alias, "
         "clipped or unsteady");
   for (const char* number : {"nan", "inf", "-inf", "1e999", "+1", " 1", "0x10", "1,0", "\"1\""}) {
     CAPTURE(number);
-    CHECK(refusal(std::string("997,-10,dBu,1,") + number + ",,0.01,\n").starts_with("row 2"));
+    CHECK(
+        refusal(std::string("997,-10,dBu,1,") + number + ",,0.01,,steady\n").starts_with("row 2"));
   }
-  CHECK(refusal("997,-10,dBu,1,0.5,,0.01,") ==
+  CHECK(refusal("997,-10,dBu,1,0.5,,0.01,,steady") ==
         "the last row is unfinished; expected it to end in a newline");
   CHECK(folder.refusal("response.csv", "") ==
         "the last row is unfinished; expected it to end in a newline");
@@ -239,7 +264,7 @@ TEST_CASE("infinite degrees of freedom are read, other infinities are not") {
   const CurvesFolder folder(c);
   CHECK(folder.read().harmonics[0].dof == kInfiniteDof);
   std::string text = harmonics_csv(c);
-  text.insert(text.rfind("inf"), "-");
+  text.insert(text.begin() + static_cast<long>(text.rfind("inf")), '-');
   CHECK(folder.refusal("harmonics.csv", text) ==
         "row 2, column 17 \"dof\": found \"-inf\"; expected a number or inf");
 }

@@ -14,7 +14,7 @@ TEST_CASE(
     "every method's stimulus: peak of the sine, ramps of 20 ms and four periods, silent ends") {
   for (const Method& m : methods()) {
     for (const double asked :
-         m.wants_frequency ? std::vector{41.0, 997.0, 4990.0} : std::vector{0.0}) {
+         m.needs.frequencies ? std::vector{41.0, 997.0, 4990.0} : std::vector{0.0}) {
       CAPTURE(m.id);
       CAPTURE(asked);
       const TakeSpec spec = spec_for(std::string(m.id), asked, -12.0);

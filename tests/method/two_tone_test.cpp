@@ -113,7 +113,7 @@ TEST_CASE("predictions by a curve agree with its measured products") {
   for (const std::string method : {"smpte", "ccif"}) {
     const TakeSpec spec = spec_for(method, 0.0, 0.0);
     const Curves c = read(spec, response(spec, cubic));
-    for (const PredictedProduct& p : find_method(method)->predict(exact, 1.0)) {
+    for (const PredictedProduct& p : find_method(method)->predict(exact, {}, 1.0)) {
       CAPTURE(p.product);
       CHECK(100.0 * p.ratio == doctest::Approx(*row(c, p.product).percent).epsilon(1e-9));
     }

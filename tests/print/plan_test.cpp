@@ -15,14 +15,20 @@ namespace {
 
 using nlohmann::json;
 
-const std::vector<std::string> kMethods{"steady", "smpte", "ccif"};
+const std::vector<MethodNeeds> kMethods{
+    {.id = "steady", .frequencies = true},
+    {.id = "smpte"},
+    {.id = "ccif"},
+    {.id = "pair", .tones = true, .tones_required = true, .ratio = true},
+    {.id = "slow", .duration = true, .listening = true}};
 
 json full() {
   return json::parse(R"({"format":"kneeprint-plan","version":1,"name":"mine",
     "ladder":{"from":-60,"to":0,"step_db":3,"unit":"dBFS"},
     "steps":[{"method":"steady","frequencies_hz":[41,997,4990.5]},{"method":"smpte"}],
     "orders":12,"block_s":0.25,"blocks":5,"longest_time_constant_s":0.7,"settle_limit_s":6,
-    "warm_up_s":1.5,"wanted_uncertainty_db":0.02,"stop":{"thd_f_percent":30,"compression_db":12},
+    "warm_up_s":1.5,"wanted_uncertainty_db":0.02,"wanted_harmonic_u_db":0.5,"wanted_orders":3,
+    "descend":true,"stop":{"thd_f_percent":30,"compression_db":12},
     "ceiling":{"value":20,"unit":"dBu"},"fit_frequency_hz":997})");
 }
 
@@ -117,10 +123,37 @@ TEST_CASE("canonical text: equal plans give equal bytes, and nothing is lost on 
   CHECK(plan_json(parse(plan)) == once);
 }
 
+TEST_CASE("a step's options are those that its method uses") {
+  json plan = full();
+  plan["steps"].push_back(
+      {{"method", "pair"}, {"tones_hz", {250, 8000}}, {"ratio", 4}, {"every", 3}});
+  plan["steps"].push_back({{"method", "pair"}, {"tones_hz", {400, 8000}}});
+  plan["steps"].push_back({{"method", "slow"}, {"duration_s", 10}, {"listening_db_spl", 83}});
+  const Plan read = parse(plan);
+  CHECK(read.steps[2].options.tones == std::vector{Hertz(250.0), Hertz(8000.0)});
+  CHECK(read.steps[2].options.ratio == 4.0);
+  CHECK(read.steps[2].every == 3);
+  CHECK(read.steps[4].options.duration == Seconds(10.0));
+  CHECK(read.steps[4].options.listening_db_spl == 83.0);
+  CHECK(json::parse(plan_json(read)) == plan);
+  plan["steps"].push_back({{"method", "pair"}, {"tones_hz", {250, 8000}}, {"ratio", 4}});
+  CHECK_THROWS_AS(parse(plan), InputError);  // the same take twice
+
+  CHECK(refusal("/steps/1", {{"method", "pair"}}) ==
+        "plan.json: field \"steps[1].tones_hz\": missing; method \"pair\" needs two frequencies");
+  CHECK(refusal("/steps/1", {{"method", "pair"}, {"tones_hz", {250}}}) ==
+        "plan.json: field \"steps[1].tones_hz\": found 1 frequencies; expected two");
+  CHECK(refusal("/steps/1", {{"method", "pair"}, {"tones_hz", {8000, 250}}}) ==
+        "plan.json: field \"steps[1].tones_hz\": expected the lower frequency first");
+  CHECK(refusal("/steps/1", {{"method", "smpte"}, {"ratio", 4}}) ==
+        "plan.json: field \"steps[1].ratio\": method \"smpte\" does not use it; expected no such "
+        "field");
+}
+
 TEST_CASE("a refused field is named with what was found and what was expected") {
   CHECK(refusal("/steps/1/method", "foo") ==
         "plan.json: field \"steps[1].method\": unknown method \"foo\"; expected one of: steady, "
-        "smpte, ccif");
+        "smpte, ccif, pair, slow");
   CHECK(refusal("/ordres", 3)
             .starts_with("plan.json: field \"ordres\": unknown field; expected one of: format, "
                          "version, name,"));
@@ -304,7 +337,7 @@ TEST_CASE("the built-in plans are what their names promise") {
 }
 
 TEST_CASE("a built-in plan of a method that is not known is refused") {
-  CHECK_THROWS_AS(load_plan("portrait", {"steady"}), InputError);
+  CHECK_THROWS_AS(load_plan("portrait", {kMethods.front()}), InputError);
 }
 
 TEST_CASE("a plan comes from a file, or the built-in names are listed") {

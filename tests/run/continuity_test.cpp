@@ -33,7 +33,7 @@ Waveform jump(const Waveform& w, std::size_t at, long frames) {
 TEST_CASE(
     "lost and repeated frames are found on every kind of take, wherever they fall in the hold") {
   for (const Method& m : methods()) {
-    const TakeSpec spec = spec_for(std::string(m.id), m.wants_frequency ? 997.0 : 0.0, -12.0);
+    const TakeSpec spec = spec_for(std::string(m.id), m.needs.frequencies ? 997.0 : 0.0, -12.0);
     const Stimulus s = m.stimulus(spec, Hertz(48000.0));
     const Waveform clean = response(spec, gentle, 1e-5, 5);
     CHECK_FALSE(check_continuity(clean, s.hold).jumped);

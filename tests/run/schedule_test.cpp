@@ -67,15 +67,37 @@ TEST_CASE("levels in volts, dBV and dBu need a calibrated rig") {
 
 TEST_CASE("takes are numbered rung by rung after the chain check") {
   const Plan p = simple_plan();
-  CHECK(takes_per_rung(p) == 3);
-  CHECK(take_number(p, 0, 0) == 1);
-  CHECK(take_number(p, 2, 1) == 8);
   Rig rig;
   const auto takes = takes_of_rung(p, rig, LevelDbfs(-12.0), 2);
   REQUIRE(takes.size() == 3);
+  CHECK(takes_of_rung(p, rig, LevelDbfs(-60.0), 0).front().number == 1);
+  CHECK(takes[1].number == 8);
   CHECK(takes[1].asked == Hertz(997.0));
   CHECK(takes[2].method == "smpte");
   CHECK(takes[0].hold_blocks >= 4);
+}
+
+TEST_CASE("every number leads back to its take, whatever the plan plays") {
+  Plan p = simple_plan();
+  p.descend = true;
+  p.steps[1].every = 3;
+  const Rig rig;
+  int last = 0;
+  for (int rung = 0; rung < 7; ++rung) {
+    for (const bool down : {false, true}) {
+      for (const TakeSpec& spec : takes_of_rung(p, rig, LevelDbfs(-20.0), rung, down)) {
+        CHECK(spec.number > last);
+        last = spec.number;
+        const auto back = take_by_number(p, rig, spec.number, spec.send, rung);
+        REQUIRE(back.has_value());
+        CHECK(back->method == spec.method);
+        CHECK(back->asked == spec.asked);
+        CHECK(back->down == down);
+        CHECK((spec.method == "steady" || (rung % 3 == 0 && !down)));
+      }
+    }
+  }
+  CHECK_FALSE(take_by_number(p, rig, 0, LevelDbfs(-20.0), 0).has_value());
 }
 
 TEST_CASE("the fit uses the plan's frequency, else the one nearest to 997 Hz") {
