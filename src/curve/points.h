@@ -63,8 +63,10 @@ struct LevelPoint {
   double asked_hz = 0.0;  ///< the frequency the plan named
   int blocks = 0;         ///< averaged
   double settled_after_s = 0.0;
-  std::string direction = "up";       ///< of the ladder when it was taken: up, down
-  std::string integration = "fixed";  ///< why it ended: reached, time-spent, fixed (nothing wanted)
+  std::string direction = "up";  ///< of the ladder when it was taken: up, down
+  /// Why the take ended: reached (the wanted uncertainty), time-spent, floor (the rig's own is too
+  /// large for it), fixed (nothing was wanted).
+  std::string integration = "fixed";
 };
 
 struct IntermodPoint {

@@ -96,6 +96,29 @@ Distortion total(const std::vector<RelativeReading>& orders) {
   return {d, any_above_floor ? Flag::none : Flag::floor};
 }
 
+// How far a take is from the uncertainty that its plan wants.
+struct Integration {
+  double longer = 0.0;       // the hold must be so many times as long; <= 1: long enough
+  bool floor_bound = false;  // the rig floor alone is too uncertain: no hold would help
+};
+
+// What an order under the noise needs cannot be told; twice as long is tried.
+void want(Integration& all, const RelativeReading& r, double type_a, Decibels wanted) {
+  constexpr double kUnknown = 2.0;
+  if (r.flag == Flag::noise) {
+    all.longer = std::max(all.longer, kUnknown);
+    return;
+  }
+  // u falls with the square root of the time; the floor's share of it does not.
+  const double most = wanted.value() / kDbPerRelative * r.ratio / coverage_factor_95(r.dof);
+  const double fixed = r.u * r.u - type_a * type_a;
+  if (most * most <= fixed) {
+    all.floor_bound = true;
+  } else {
+    all.longer = std::max(all.longer, type_a * type_a / (most * most - fixed));
+  }
+}
+
 class SteadyReading {
  public:
   SteadyReading(const TakeSpec& spec, const TakeData& take, const RigView& rig)
@@ -142,6 +165,7 @@ class SteadyReading {
   double drive_ = 0.0;         // level at the unit's input, in the rig's unit
   LevelDbfs return_level_;
   double output_type_a_db_ = 0.0;
+  Integration integration_;
 };
 
 void SteadyReading::read_drive() {
@@ -253,6 +277,9 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       const double floor = floor_.empty() ? 0.0 : floor_[static_cast<std::size_t>(n)];
       RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
       if (n == 1) r = {1.0, 0.0, l.dof, Flag::none};
+      if (n > 1 && n <= spec_.settings.wanted_orders) {
+        want(integration_, r, l.u / std::abs(fundamental_.mean), spec_.settings.wanted_harmonic_u);
+      }
       if (floor > 0.0) point.floor_db = 20.0 * std::log10(floor);
       place(point, r, l);
       response.flag = point.flag;
@@ -379,6 +406,12 @@ TakeVerdict SteadyReading::read(Curves& out) {
   }
   read_floor();
   read_harmonics(out, level);
+  if (spec_.settings.wanted_harmonic_u.value() > 0.0) {
+    verdict.longer = integration_.longer;
+    level.integration = integration_.longer > 1.0  ? "time-spent"
+                        : integration_.floor_bound ? "floor"
+                                                   : "reached";
+  }
   read_residual(level);
   read_dc(level);
   out.levels.push_back(level);

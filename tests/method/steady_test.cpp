@@ -206,3 +206,30 @@ TEST_CASE("a perfect wire gives no infinite or undefined figure") {
     if (p.thd_f_percent) CHECK(*p.thd_f_percent < (rounded ? 1e-5 : 1e-10));
   }
 }
+
+TEST_CASE("a take tells by how much longer it must be for the wanted uncertainty") {
+  const auto curve = [](double x) { return x + 0.01 * x * x + 0.02 * x * x * x; };
+  TakeSpec spec = spec_for("steady", 997.0, -20.0);
+  spec.settings.wanted_harmonic_u = Decibels(1.0);
+  spec.settings.wanted_orders = 3;
+  TakeVerdict verdict;
+  Curves c = read(spec, response(spec, curve, 3e-4), {}, &verdict);
+  REQUIRE(verdict.longer.has_value());
+  CHECK(*verdict.longer > 1.5);
+  CHECK(c.levels.at(0).integration == "time-spent");
+  // Expanded uncertainty falls with the square root of the time; its own estimate scatters by some
+  // per cent.
+  spec.hold_blocks = static_cast<int>(std::ceil(1.3 * *verdict.longer * spec.hold_blocks));
+  c = read(spec, response(spec, curve, 3e-4, 2), {}, &verdict);
+  CHECK(*verdict.longer <= 1.0);
+  CHECK(c.levels.at(0).integration == "reached");
+  CHECK(*c.harmonics.at(1).expanded_u_db <= 1.0);
+  CHECK(*c.harmonics.at(2).expanded_u_db <= 1.0);
+
+  // A rig floor 10 dB under H3 is 2.7 dB of doubt that no time takes away.
+  RigView rig;
+  const Decibels under(*c.harmonics.at(2).relative_db - 16.0);  // counted for send and for return
+  rig.floor = RigFloor({{LevelDbfs(0.0), 2, Decibels(-140.0)}, {LevelDbfs(0.0), 3, under}});
+  c = read(spec, response(spec, curve, 3e-4, 2), rig, &verdict);
+  CHECK(c.levels.at(0).integration == "floor");
+}

@@ -3,6 +3,7 @@
 
 #include <cmath>
 
+#include "curve/csv.h"
 #include "print/folder.h"
 #include "quantity/failure.h"
 #include "rig/virtual_port.h"
@@ -165,4 +166,40 @@ TEST_CASE("a damaged take is made again on resume") {
   for (std::size_t i = 0; i < before.harmonics.size(); ++i) {
     CHECK(before.harmonics[i].in_phase == after.harmonics[i].in_phase);
   }
+}
+
+TEST_CASE("takes are held until the wanted uncertainty of harmonics is reached or time is spent") {
+  Plan plan = small_plan();
+  plan.ladder = {{-70.0, PlanUnit::dbfs}, {-10.0, PlanUnit::dbfs}, Decibels(15.0)};
+  plan.wanted_harmonic_u = Decibels(0.5);
+  plan.wanted_orders = 3;
+  plan.settle_limit = Seconds(8.0);
+  Run run("sigmoid:limit=4,drive=0.4,bias=0.15", plan);
+  run.climb();
+  const auto levels = run.curves().levels;
+  const auto harmonics = run.curves().harmonics;
+  REQUIRE(levels.size() == 5);
+  CHECK(levels.front().integration == "time-spent");  // H3 is far under the noise there
+  CHECK(levels.front().blocks == 13);  // of 0.6 s: all that 8 s hold
+  CHECK(levels.back().integration == "reached");
+  CHECK(levels.back().blocks == 4);
+  for (const HarmonicPoint& h : harmonics) {
+    if (h.drive != levels.back().drive || h.order < 2 || h.order > 3) continue;
+    CHECK(*h.expanded_u_db <= 0.5);
+  }
+}
+
+TEST_CASE("a ladder that descends takes the steady steps again, and resumes to the same") {
+  Plan plan = small_plan();
+  plan.descend = true;
+  plan.steps.push_back({"smpte", {}, 2, {}});
+  Run run("sigmoid", plan);
+  CHECK(run.climb().stop.empty());
+  const Journal journal = read_journal(PrintFolder(run.request.into).journal_file(), false);
+  // Chain check, three rungs up, two of them with a two-tone take, two rungs down.
+  CHECK(journal.takes.size() == 1 + 3 + 2 + 2);
+  const std::string before = levels_csv(run.curves());
+  run.request.resume = true;
+  run.climb();
+  CHECK(levels_csv(run.curves()) == before);
 }
