@@ -8,7 +8,7 @@
 #include "quantity/failure.h"
 #include "rig/portaudio_port.h"
 #include "rig/virtual_port.h"
-#include "run/cable_floor.h"
+#include "run/loop.h"
 
 namespace kneeprint::cli {
 namespace {
@@ -23,7 +23,10 @@ OpenRig open_virtual(const RigOptions& options, std::uint64_t seed, int orders) 
   open.rig = virtual_rig(name, rate);
   open.port = make_virtual_port(name, rate, seed);
   const auto cable = make_virtual_port(parse_virtual_rig("wire"), rate, seed);
-  open.rig.floor = measure_floor(*cable, LevelDbfs(0.0), orders);
+  LoopRequest loop;
+  loop.orders = orders;
+  SilentProgress unheard;
+  add_loop(open.rig, measure_loop(*cable, loop, unheard));
   return open;
 }
 

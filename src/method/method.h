@@ -13,6 +13,7 @@
 #include <vector>
 
 #include "curve/floor.h"
+#include "curve/loop_response.h"
 #include "curve/points.h"
 #include "curve/step_options.h"
 #include "signal/waveform.h"
@@ -80,6 +81,7 @@ struct TakeData {
 struct RigView {
   LevelScale send, ret;
   RigFloor floor;
+  LoopResponse response;
   bool sees_dc = false;
   /// A reel without declared levels: gain and volts stay empty, output is made relative later.
   bool gain_known = true;

@@ -144,11 +144,26 @@ class SteadyReading {
 
   std::size_t bin(int order) const { return tone_.cycles * static_cast<std::size_t>(order); }
   double turn(int block) const { return std::arg(spectra_.at(block, tone_.cycles)); }
+  double transfer_phase() const {
+    return turn(first_) - std::arg(rig_.response.loop(tone_.frequency)) +
+           2.0 * std::numbers::pi * tone_.frequency.value() * take_.delay / rate_.value();
+  }
   bool in_reach(int order) const {
     return order * tone_.frequency.value() < kHighestShare * rig_.usable_rate(rate_).value();
   }
+  /// As it left the unit: the return's share of the rig's response is taken out. The blocks are
+  /// turned by the fundamental as recorded, so that its own turn within the return is given back.
   Line line(int order) const {
-    return spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
+    Line l = spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
+    const std::complex<double> own = rig_.response.ret(tone_.frequency).response;
+    const std::complex<double> share =
+        std::abs(own) * ret_ratio(order).response * std::polar(1.0, (1.0 - order) * std::arg(own));
+    l.mean /= share;
+    l.u /= std::abs(share);
+    return l;
+  }
+  LoopResponse::Share ret_ratio(int order) const {
+    return rig_.response.ret_ratio(order * tone_.frequency, tone_.frequency);
   }
 
   const TakeSpec& spec_;
@@ -165,38 +180,42 @@ class SteadyReading {
   double drive_ = 0.0;         // level at the unit's input, in the rig's unit
   LevelDbfs return_level_;
   double output_type_a_db_ = 0.0;
+  double return_u_db_ = 0.0;  // type B: full-scale voltage and the split of the loop's response
   Integration integration_;
 };
 
 void SteadyReading::read_drive() {
-  drive_ = rig_.send.level_of(spec_.send);
+  const Hertz f = tone_.frequency;
+  drive_ = rig_.send.level_of(spec_.send) +
+           Decibels::of_ratio(std::abs(rig_.response.send(f).response)).value();
   if (take_.reference == nullptr) return;
   // The reference return carries the drive itself: its level replaces the nominal one.
   const BlockSpectra reference(*take_.reference, layout_, tone_.cycles);
   const Line line = reference.mean(tone_.cycles, first_,
                                    [&](int b) { return std::arg(reference.at(b, tone_.cycles)); });
-  drive_ = rig_.ret.level_of_peak(std::abs(line.mean));
+  drive_ = rig_.ret.level_of_peak(std::abs(line.mean / rig_.response.ret(f).response));
 }
 
 void SteadyReading::read_fundamental(LevelPoint& level) {
   fundamental_ = line(1);
   const double peak = std::abs(fundamental_.mean);
-  return_level_ = LevelDbfs(20.0 * std::log10(peak));
+  const LoopResponse::Share own = rig_.response.ret(tone_.frequency);
+  return_level_ = LevelDbfs(20.0 * std::log10(peak * std::abs(own.response)));
+  return_u_db_ = std::hypot(rig_.ret.standard_uncertainty.value(), own.u.value());
   const double relative_u = fundamental_.u / peak;
   const double k = coverage_factor_95(fundamental_.dof);
   output_type_a_db_ = kDbPerRelative * relative_u;
   level.output = rig_.ret.level_of_peak(peak);
-  level.output_u_db = k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
+  level.output_u_db = k * std::hypot(output_type_a_db_, return_u_db_);
+  // Send and return together are what the loop showed: their split does not touch the gain.
   if (rig_.gain_known) {
     level.gain_db = *level.output - drive_;
     level.gain_u_db = k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value(),
                                      rig_.send.standard_uncertainty.value());
   }
-  // Transfer phase at the block's start, the rig's delay taken out; the stimulus is a cosine of
+  // Transfer phase at the block's start, the rig taken out; the stimulus is a cosine of
   // phase 0.
-  const double phase =
-      turn(first_) + 2.0 * std::numbers::pi * tone_.frequency.value() * take_.delay / rate_.value();
-  const double degrees = std::abs(wrapped_degrees(phase));
+  const double degrees = std::abs(wrapped_degrees(transfer_phase()));
   if (degrees < 60.0) level.polarity = 1.0;
   if (degrees > 120.0) level.polarity = -1.0;
 }
@@ -204,7 +223,9 @@ void SteadyReading::read_fundamental(LevelPoint& level) {
 // The rig's residual at these converter levels. Orders 2 and 3 bend the response as a whole, so
 // they reach every order of it; higher orders are taken as the cable showed them.
 void SteadyReading::read_floor() {
-  const auto loop = [&](int n) { return rig_.floor.at(spec_.send, return_level_, n); };
+  const auto loop = [&](int n) {
+    return rig_.floor.at(spec_.send, return_level_, n, tone_.frequency);
+  };
   if (!loop(2) || !loop(3)) return;
   std::vector<std::complex<double>> harmonics{
       spectra_.mean(0, first_, [](int) { return 0.0; }).mean};
@@ -236,8 +257,7 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
   p.level = rig_.ret.level_of_peak(r.ratio * peak);
   p.relative_db = 20.0 * std::log10(r.ratio);
   const double level_u =
-      std::hypot(coverage_factor_95(r.dof) * rig_.ret.standard_uncertainty.value(),
-                 kDbPerRelative * expanded / r.ratio);
+      std::hypot(coverage_factor_95(r.dof) * return_u_db_, kDbPerRelative * expanded / r.ratio);
   p.level_u_db = level_u;
   p.in_phase = line.mean.real() * rig_.ret.peak_per_full_scale;
   p.quadrature = line.mean.imag() * rig_.ret.peak_per_full_scale;
@@ -248,8 +268,7 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
     const double own_floor = floor_.empty() ? 0.0 : floor_[1] * peak / std::numbers::sqrt2;
     p.component_u = std::hypot(line.u, own_floor) * rig_.ret.peak_per_full_scale;
     p.dof = line.dof;
-    p.level_u_db = coverage_factor_95(line.dof) *
-                   std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value());
+    p.level_u_db = coverage_factor_95(line.dof) * std::hypot(output_type_a_db_, return_u_db_);
     return;
   }
   p.expanded_u_db = kDbPerRelative * expanded / r.ratio;
@@ -276,6 +295,12 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       const Line l = line(n);
       const double floor = floor_.empty() ? 0.0 : floor_[static_cast<std::size_t>(n)];
       RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
+      const std::array doubts{
+          Contribution{r.u, r.dof},
+          Contribution{r.ratio * ret_ratio(n).u.value() / kDbPerRelative, kInfiniteDof}};
+      const Contribution doubt = combine(doubts);
+      r.u = doubt.u;
+      r.dof = doubt.dof;
       if (n == 1) r = {1.0, 0.0, l.dof, Flag::none};
       if (n > 1 && n <= spec_.settings.wanted_orders) {
         want(integration_, r, l.u / std::abs(fundamental_.mean), spec_.settings.wanted_harmonic_u);
@@ -287,8 +312,7 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       response.phase_deg = point.phase_deg;
       response.expanded_u_db = point.level_u_db;
       if (n == 1) {
-        response.phase_deg = wrapped_degrees(turn(first_) + 2.0 * std::numbers::pi * f *
-                                                                take_.delay / rate_.value());
+        response.phase_deg = wrapped_degrees(transfer_phase());
       } else if (f < std::min(kBandHigh.value(), highest)) {
         summed.push_back(r);
         (n % 2 == 0 ? even : odd).push_back(r);

@@ -7,6 +7,7 @@
 #include <nlohmann/json.hpp>
 #include <regex>
 #include <set>
+#include <tuple>
 #include <utility>
 
 #include "platform/json_fields.h"
@@ -41,21 +42,92 @@ bool is_date(const std::string& text) {
   return std::regex_match(text, kDate);
 }
 
+FloorPoint read_floor_point(const JsonFields& p) {
+  p.allow_only({"level_dbfs", "return_dbfs", "frequency_hz", "order", "product", "relative_db",
+                "phase_deg"});
+  FloorPoint point;
+  point.level = LevelDbfs(p.number("level_dbfs", {-140.0, 0.0}));
+  if (p.has("return_dbfs")) point.ret = LevelDbfs(p.number("return_dbfs", {-200.0, 6.0}));
+  if (p.has("frequency_hz"))
+    point.frequency = Hertz(p.number("frequency_hz", {0.0, 90000.0, true}));
+  if (p.has("product")) {
+    point.order = 0;
+    point.product = p.text("product");
+    if (p.has("order")) p.refuse("order", "stands beside product; give one of them");
+  } else {
+    point.order = p.integer("order", 2, 20);
+  }
+  point.relative = Decibels(p.number("relative_db", {-400.0, 0.0}));
+  if (p.has("phase_deg")) point.phase_deg = p.number("phase_deg", {-180.0, 180.0});
+  return point;
+}
+
 RigFloor read_floor(const JsonFields& f) {
   std::vector<FloorPoint> points;
-  std::set<std::pair<int, double>> seen;
+  std::set<std::tuple<int, std::string, double, double, double>> seen;
   for (const JsonFields& p : f.objects("floor")) {
-    p.allow_only({"level_dbfs", "order", "relative_db"});
-    points.push_back({LevelDbfs(p.number("level_dbfs", {-140.0, 0.0})), p.integer("order", 2, 20),
-                      Decibels(p.number("relative_db", {-400.0, 0.0}))});
-    if (!seen.insert({points.back().order, points.back().level.value()}).second) {
+    points.push_back(read_floor_point(p));
+    const FloorPoint& n = points.back();
+    if (!seen.insert({n.order, n.product, n.frequency.value(), n.level.value(),
+                      n.return_level().value()})
+             .second) {
       p.refuse("level_dbfs",
-               fmt::format("found {:g} a second time for order {}; expected one entry "
-                           "for each level and order",
-                           points.back().level.value(), points.back().order));
+               fmt::format("found {:g} a second time for {}; expected one entry for each pair of "
+                           "levels, frequency and line",
+                           n.level.value(),
+                           n.product.empty() ? fmt::format("order {}", n.order) : n.product));
     }
   }
   return RigFloor(std::move(points));
+}
+
+nlohmann::ordered_json floor_json(const RigFloor& floor) {
+  auto list = nlohmann::ordered_json::array();
+  for (const FloorPoint& p : floor.points()) {
+    nlohmann::ordered_json j{{"level_dbfs", p.level.value()}};
+    if (p.ret) j["return_dbfs"] = tidy(p.ret->value());
+    if (p.frequency.value() > 0.0) j["frequency_hz"] = p.frequency.value();
+    if (p.product.empty())
+      j["order"] = p.order;
+    else
+      j["product"] = p.product;
+    j["relative_db"] = p.relative.value();
+    if (p.phase_deg) j["phase_deg"] = *p.phase_deg;
+    list.push_back(std::move(j));
+  }
+  return list;
+}
+
+LoopResponse read_response(const JsonFields& f) {
+  f.allow_only({"return_share", "points"});
+  std::optional<double> share;
+  if (f.has("return_share")) share = f.number("return_share", {0.0, 1.0});
+  std::vector<LoopPoint> points;
+  for (const JsonFields& p : f.objects("points")) {
+    p.allow_only({"frequency_hz", "magnitude_db", "phase_deg"});
+    points.push_back({Hertz(p.number("frequency_hz", {0.0, 90000.0, true})),
+                      Decibels(p.number("magnitude_db", {-60.0, 60.0})),
+                      p.number("phase_deg", {-1e5, 1e5})});
+    for (std::size_t i = 0; i + 1 < points.size(); ++i) {
+      if (points[i].frequency == points.back().frequency) {
+        p.refuse("frequency_hz", fmt::format("found {:g} Hz a second time; expected once",
+                                             points.back().frequency.value()));
+      }
+    }
+  }
+  return LoopResponse(std::move(points), share);
+}
+
+nlohmann::ordered_json response_json(const LoopResponse& response) {
+  nlohmann::ordered_json j;
+  if (response.return_share()) j["return_share"] = *response.return_share();
+  j["points"] = nlohmann::ordered_json::array();
+  for (const LoopPoint& p : response.points()) {
+    j["points"].push_back({{"frequency_hz", p.frequency.value()},
+                           {"magnitude_db", p.magnitude.value()},
+                           {"phase_deg", p.phase_deg}});
+  }
+  return j;
 }
 
 nlohmann::ordered_json direction_json(int channel, const LevelScale& scale, bool dc_coupled) {
@@ -113,14 +185,8 @@ std::string rig_json(const Rig& rig) {
   if (rig.ceiling_dbfs) j["ceiling_dbfs"] = *rig.ceiling_dbfs;
   if (!rig.calibrated_on.empty()) j["calibrated_on"] = rig.calibrated_on;
   if (rig.invented) j["invented"] = true;
-  if (rig.floor.known()) {
-    j["floor"] = nlohmann::ordered_json::array();
-    for (const FloorPoint& p : rig.floor.points()) {
-      j["floor"].push_back({{"level_dbfs", p.level.value()},
-                            {"order", p.order},
-                            {"relative_db", p.relative.value()}});
-    }
-  }
+  if (rig.response.known()) j["response"] = response_json(rig.response);
+  if (rig.floor.known()) j["floor"] = floor_json(rig.floor);
   return j.dump(2) + "\n";
 }
 
@@ -130,7 +196,8 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
   f.check_format(kFormat, kVersion);
   f.allow_only({"format", "version", "name", "kind", "device", "rate_hz", "recorded_rate_hz",
                 "send", "return", "reference", "wiring", "source_impedance_ohm",
-                "load_impedance_ohm", "ceiling_dbfs", "calibrated_on", "invented", "floor"});
+                "load_impedance_ohm", "ceiling_dbfs", "calibrated_on", "invented", "response",
+                "floor"});
   Rig rig;
   rig.name = f.text("name");
   const std::string kind = f.choice("kind", "kind", {"virtual", "live", "reel"});
@@ -182,6 +249,7 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
     }
   }
   if (f.has("invented")) rig.invented = f.boolean("invented");
+  if (f.has("response")) rig.response = read_response(f.object("response"));
   if (f.has("floor")) rig.floor = read_floor(f);
   return rig;
 }

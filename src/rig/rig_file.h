@@ -8,6 +8,7 @@
 
 #include "curve/floor.h"
 #include "curve/level_scale.h"
+#include "curve/loop_response.h"
 
 namespace kneeprint {
 
@@ -32,6 +33,7 @@ struct Rig {
   std::optional<Ohms> load_impedance;
   std::optional<double> ceiling_dbfs;  ///< the guard's, when the rig file names one
   RigFloor floor;
+  LoopResponse response;
   std::string calibrated_on;  ///< ISO date, or empty
   bool invented = false;      ///< virtual rigs: every page says so
 };

@@ -101,6 +101,23 @@ double ConverterNoise::quantise(double value) {
   return std::clamp(value, -1.0, 1.0);
 }
 
+// Bilinear transform of s / (s + w) with the corner prewarped (Oppenheim & Schafer 2010, 7.2, from
+// memory): y[n] = p y[n-1] + g (x[n] - x[n-1]).
+Coupling::Coupling(Hertz corner, Hertz rate) {
+  const double t = std::tan(std::numbers::pi * (corner / rate));
+  pole_ = (1.0 - t) / (1.0 + t);
+  gain_ = 1.0 / (1.0 + t);
+}
+
+void Coupling::process(std::span<double> x) {
+  if (pole_ == 1.0) return;
+  for (double& v : x) {
+    y_ = pole_ * y_ + gain_ * (v - before_);
+    before_ = v;
+    v = y_;
+  }
+}
+
 int oversampling_at(const UnitRecord& unit, Hertz rate) {
   const double wanted = unit.oversampling * 48000.0 / rate.value();
   return std::max(16, 1 << static_cast<int>(std::lround(std::log2(wanted))));
@@ -115,6 +132,7 @@ VirtualChain::VirtualChain(const VirtualRigName& name, Hertz rate, std::uint64_t
       cube_(4.0 * model.third_harmonic.ratio() / (full_scale_peak_ * full_scale_peak_)),
       factor_(checked_oversampling(name, rate)),
       interpolator_(factor_),
+      send_coupling_(model.send_coupling, rate * factor_),
       unit_(virtual_unit(name.unit).make(name.settings, rate * factor_)),
       send_noise_(model, stream_seed(seed, Stream::send, take)) {
   boost::random::mt19937_64 hidden(stream_seed(seed, Stream::hidden, 0));
@@ -141,16 +159,19 @@ VirtualChain::VirtualChain(const VirtualRigName& name, Hertz rate, std::uint64_t
   }
   const auto coarse = static_cast<std::size_t>(high / factor_) - 1;
   const double fine = high - static_cast<double>(coarse) * factor_;
-  returns_.push_back(make_return(stream_seed(seed, Stream::ret, take), return_error, fine, coarse));
+  returns_.push_back(make_return(rate * factor_, stream_seed(seed, Stream::ret, take), return_error,
+                                 fine, coarse));
   if (model_.reference) {
-    returns_.push_back(
-        make_return(stream_seed(seed, Stream::reference, take), reference_error, fine, coarse));
+    returns_.push_back(make_return(rate * factor_, stream_seed(seed, Stream::reference, take),
+                                   reference_error, fine, coarse));
   }
 }
 
-VirtualChain::Return VirtualChain::make_return(std::uint64_t seed, double gain_error_db,
-                                               double fine, std::size_t coarse) const {
+VirtualChain::Return VirtualChain::make_return(Hertz high_rate, std::uint64_t seed,
+                                               double gain_error_db, double fine,
+                                               std::size_t coarse) const {
   return {1.0 / (full_scale_peak_ * Decibels(gain_error_db).ratio()),
+          Coupling(model_.return_coupling, high_rate),
           OversampledDelay(fine),
           Decimator(factor_),
           std::vector<double>(coarse, 0.0),
@@ -164,6 +185,7 @@ void VirtualChain::distort(std::span<double> volts) const {
 }
 
 void VirtualChain::take_in(Return& path, std::span<double> volts, std::span<float> out) {
+  path.coupling.process(volts);
   distort(volts);
   path.fine_delay.process(volts);
   base_.resize(out.size());
@@ -190,6 +212,7 @@ void VirtualChain::process(std::span<const float> sent, std::span<float> returne
     }
     high_.resize(count * static_cast<std::size_t>(factor_));
     interpolator_.process(base_, high_);
+    send_coupling_.process(high_);
     distort(high_);
     if (returns_.size() > 1 && !reference.empty()) {
       split_ = high_;

@@ -45,6 +45,18 @@ class ConverterNoise {
   boost::random::normal_distribution<double> normal_;
 };
 
+/// First-order high-pass, y' + w y = x' by the trapezoidal rule: exact at DC, and its corner warped
+/// by less than 1e-6 at the oversampled rate.
+class Coupling {
+ public:
+  Coupling(Hertz corner, Hertz rate);  ///< corner 0: passes everything
+  void process(std::span<double> x);
+
+ private:
+  double pole_, gain_;
+  double before_ = 0.0, y_ = 0.0;
+};
+
 class VirtualChain {
  public:
   /// Starts at the settled rest of the take. Throws UsageError for an unknown unit or setting, and
@@ -61,6 +73,7 @@ class VirtualChain {
   /// From volts at the higher rate to return samples: residual, decimation, delay, noise, clip.
   struct Return {
     double samples_per_volt;
+    Coupling coupling;
     OversampledDelay fine_delay;
     Decimator decimator;
     std::vector<double> coarse_delay;  ///< ring
@@ -69,7 +82,7 @@ class VirtualChain {
   };
   void take_in(Return& path, std::span<double> volts, std::span<float> out);
   void distort(std::span<double> volts) const;
-  Return make_return(std::uint64_t seed, double gain_error_db, double fine,
+  Return make_return(Hertz high_rate, std::uint64_t seed, double gain_error_db, double fine,
                      std::size_t coarse) const;
 
   ConverterModel model_;
@@ -78,6 +91,7 @@ class VirtualChain {
   double volts_per_sample_;  ///< send, true
   int factor_;
   Interpolator interpolator_;
+  Coupling send_coupling_;
   std::unique_ptr<VirtualUnit> unit_;
   ConverterNoise send_noise_;
   std::vector<Return> returns_;  ///< the unit's, and the reference's where there is one

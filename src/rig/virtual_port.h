@@ -26,6 +26,8 @@ struct ConverterModel {
   LevelDbfs noise{-116.0};      ///< rms of each converter, white to half the rate
   Decibels second_harmonic{-128.0};  ///< residual of each converter at full scale
   Decibels third_harmonic{-132.0};
+  /// Corner of the first-order coupling of each direction; 0: passes DC.
+  Hertz send_coupling{0.0}, return_coupling{0.0};
   /// Round trip, the same at every frequency; any real number above 380 (buffer and filters).
   double latency_samples = 1473.3125;
   bool dither_and_quantise = true;

@@ -22,4 +22,11 @@ class Progress {
   virtual void say(const std::string& sentence) = 0;
 };
 
+/// For what nobody waits for.
+class SilentProgress : public Progress {
+ public:
+  void step(const ProgressStep&) override {}
+  void say(const std::string&) override {}
+};
+
 }  // namespace kneeprint

@@ -80,6 +80,7 @@ RigView view_of(const Rig& rig) {
     view.ret = rig.return_scale;
   }
   view.floor = rig.floor;
+  view.response = rig.response;
   view.sees_dc = rig.dc_coupled_return;
   view.gain_known = rig.kind != RigKind::reel || view.send.is_calibrated();
   view.recorded_rate = rig.recorded_rate;

@@ -129,3 +129,49 @@ TEST_CASE("points are kept by order, then level") {
     CHECK(floor.points()[i].level.value() == expected[i].second);
   }
 }
+
+TEST_CASE("a pad in the loop tells the send's share from the return's") {
+  // Send share 1e-6 at -10 dBFS, return share 4e-6 at -10 dBFS; with the pad the return rests at
+  // -30 dBFS and shows nothing.
+  std::vector<FloorPoint> points{point(-30, 2, db(1e-7)), point(-10, 2, db(5e-6))};
+  FloorPoint padded = point(-10, 2, db(1e-6));
+  padded.ret = LevelDbfs(-30.2);
+  points.push_back(padded);
+  const RigFloor floor(points);
+  // At the pair of the pad: the send's own, and what the loop shows with both at the low level.
+  CHECK(*floor.at(LevelDbfs(-10), LevelDbfs(-30.2), 2) ==
+        doctest::Approx(1e-6 + 1e-7).epsilon(kRounding));
+  // At equal levels the loop's figure still bounds the return's share.
+  CHECK(*floor.at(LevelDbfs(-10), LevelDbfs(-10), 2) ==
+        doctest::Approx(1e-6 + 5e-6).epsilon(kRounding));
+}
+
+TEST_CASE("between measured frequencies the larger neighbour counts") {
+  std::vector<FloorPoint> points;
+  for (const auto& [hz, relative] : {std::pair{41.0, -100.0}, {997.0, -120.0}, {4990.0, -110.0}}) {
+    FloorPoint p = point(-10, 2, relative);
+    p.frequency = kneeprint::Hertz(hz);
+    points.push_back(p);
+  }
+  const RigFloor floor(points);
+  const auto at = [&](double hz) {
+    return db(*floor.at(LevelDbfs(-20), LevelDbfs(-20), 2, kneeprint::Hertz(hz)) / 2.0);
+  };
+  CHECK(at(20.0) == doctest::Approx(-100.0));
+  CHECK(at(100.0) == doctest::Approx(-100.0));
+  CHECK(at(996.667) == doctest::Approx(-120.0));  // as played, after the shift to whole cycles
+  CHECK(at(900.0) == doctest::Approx(-100.0));
+  CHECK(at(2000.0) == doctest::Approx(-110.0));
+  CHECK(at(9000.0) == doctest::Approx(-110.0));
+  CHECK(at(0.0) == doctest::Approx(-100.0));
+}
+
+TEST_CASE("products have a floor of their own") {
+  FloorPoint p = point(-10, 0, -115);
+  p.product = "smpte m2";
+  const RigFloor floor({p, point(-10, 2, -130)});
+  CHECK(db(*floor.at_product(LevelDbfs(-20), LevelDbfs(-20), "smpte", "m2") / 2.0) ==
+        doctest::Approx(-115.0));
+  CHECK_FALSE(floor.at_product(LevelDbfs(-20), LevelDbfs(-20), "smpte", "m3").has_value());
+  CHECK(db(*floor.at(LevelDbfs(-20), LevelDbfs(-20), 2) / 2.0) == doctest::Approx(-130.0));
+}
