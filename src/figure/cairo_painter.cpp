@@ -13,6 +13,7 @@
 #include "figure/cairo_text.h"
 #include "figure/palette.h"
 #include "figure/spread.h"
+#include "figure/surface_painter.h"
 #include "figure/svg_text.h"
 #include "figure/ticks.h"
 #include "quantity/failure.h"
@@ -31,10 +32,6 @@ constexpr double kSample = 22.0;  ///< length of the line sample before a label
 constexpr double kMarker = 3.1;   ///< radius
 constexpr double kArrow = 13.0;
 constexpr double kLoneBand = 8.0;  ///< half width of a band known at one drive alone
-
-struct Box {
-  double left, top, right, bottom;
-};
 
 class Painter {
  public:
@@ -83,6 +80,8 @@ void Painter::layout() {
   for (const auto& s : figure_.series)
     if (!s.label.empty() && !s.label_at_point)
       right = std::max(right, 12.0 + label_width(cr_, s) + kMargin / 2);
+  if (figure_.surface)
+    right = std::max(right, 12.0 + surface_legend_width(cr_, *figure_.surface) + kMargin / 2);
   right = std::min(right, 0.36 * size_.width);
   note_ = figure_.note.empty() ? std::vector<std::string>{}
                                : wrap_text(cr_, figure_.note, size_.width - 2 * kMargin, kNote);
@@ -446,6 +445,7 @@ void Painter::paint() {
 
   draw_bands();
   draw_grid();
+  if (figure_.surface) paint_surface(cr_, figure_, x_, y_, plot_, plot_.right + 12.0);
   draw_band_labels();
   draw_marks();
   set_colour(cr_, kSoftInk);
@@ -466,8 +466,9 @@ void Painter::paint() {
   for (const auto& s : figure_.series) draw_series(s);
   draw_labels();
 
-  const bool empty = std::none_of(figure_.series.begin(), figure_.series.end(),
-                                  [](const Series& s) { return !s.points.empty(); });
+  const bool empty =
+      !figure_.surface && std::none_of(figure_.series.begin(), figure_.series.end(),
+                                       [](const Series& s) { return !s.points.empty(); });
   if (empty)
     draw_text(cr_, "no data",
               (plot_.left + plot_.right) / 2 - text_width(cr_, "no data", kNote) / 2,
@@ -481,7 +482,7 @@ struct SurfaceDeleter {
 struct ContextDeleter {
   void operator()(cairo_t* c) const { cairo_destroy(c); }
 };
-using Surface = std::unique_ptr<cairo_surface_t, SurfaceDeleter>;
+using CairoSurface = std::unique_ptr<cairo_surface_t, SurfaceDeleter>;
 using Context = std::unique_ptr<cairo_t, ContextDeleter>;
 
 cairo_status_t append(void* text, const unsigned char* bytes, unsigned int count) {
@@ -497,7 +498,7 @@ void paint(cairo_t* context, const Figure& figure, FigureSize size) {
 
 std::string svg(const Figure& figure, FigureSize size) {
   std::string text;
-  Surface surface(cairo_svg_surface_create_for_stream(append, &text, size.width, size.height));
+  CairoSurface surface(cairo_svg_surface_create_for_stream(append, &text, size.width, size.height));
   {
     Context context(cairo_create(surface.get()));
     paint(context.get(), figure, size);
@@ -508,7 +509,7 @@ std::string svg(const Figure& figure, FigureSize size) {
 
 void write_png(const Figure& figure, const std::filesystem::path& file, FigureSize size,
                double scale) {
-  Surface surface(cairo_image_surface_create(CAIRO_FORMAT_RGB24,
+  CairoSurface surface(cairo_image_surface_create(CAIRO_FORMAT_RGB24,
                                              static_cast<int>(std::lround(size.width * scale)),
                                              static_cast<int>(std::lround(size.height * scale))));
   {

@@ -1,7 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Paints figures on Cairo surfaces: SVG text for HTML pages, pages of a PDF, PNG for looking at.
-// With cairo_text the only files in figure/ that see Cairo. Repeatable: the same figure gives the
-// same bytes. Letters are drawn as outlines, so a page needs no font where it is read.
+// With cairo_text and surface_painter the only files in figure/ that see Cairo. Repeatable: the
+// same figure gives the same bytes. Letters are drawn as outlines, so a page needs no font where it
+// is read.
 #pragma once
 
 #include <filesystem>

@@ -32,6 +32,22 @@ struct Band {  ///< shaded between low and high, e.g. the rig floor
   std::vector<FigurePoint> points;  ///< high set; an empty low reaches the end of the axis
 };
 
+/// One measured place of a surface.
+struct SurfaceCell {
+  double x = 0.0, y = 0.0;
+  double value = 0.0;
+  std::string text;          ///< printed in the cell where it fits
+  bool upper_limit = false;  ///< the text says so; the cell is coloured as the value
+  bool doubtful = false;     ///< flagged: struck through
+};
+
+/// A value over two axes, as a map of cells that reach half way to their neighbours. Colour runs
+/// from light (low) to dark (high) in steps that the legend names.
+struct Surface {
+  bool logarithmic = false;
+  std::vector<SurfaceCell> cells;
+};
+
 struct Mark {  ///< a labelled line at a value
   std::string label;
   bool vertical = true;
@@ -54,6 +70,7 @@ struct Figure {
   std::vector<Series> series;
   std::vector<Band> bands;
   std::vector<Mark> marks;
+  std::optional<Surface> surface;
 };
 
 }  // namespace kneeprint

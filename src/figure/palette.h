@@ -38,6 +38,11 @@ inline constexpr std::array<SeriesLook, 7> kLooks{{
     {rgb(0x22262b), MarkerShape::cross, {12, 3, 1.5, 3}},
 }};
 
+/// Of surfaces, low to high: lightness falls evenly, so the order survives greyscale print.
+inline constexpr std::array<Colour, 7> kRamp{rgb(0xf3ecdc), rgb(0xd9dfd2), rgb(0xb3cdca),
+                                             rgb(0x86b3bb), rgb(0x5990a6), rgb(0x376a8c),
+                                             rgb(0x1b3f6b)};
+
 /// Any index: the table repeats.
 inline const SeriesLook& look(int index) {
   const int n = static_cast<int>(kLooks.size());

@@ -11,6 +11,7 @@
 #include "report/number_text.h"
 #include "report/report.h"
 #include "report/report_facts.h"
+#include "report/surface_figures.h"
 
 namespace kneeprint {
 namespace {
@@ -424,6 +425,7 @@ std::vector<Figure> report_figures(const ReportData& data) {
                       "both tones (IEC 60268-3)."));
   if (data.model) add(transfer_figure(data, fit_hz));
   add(balance_figure(data));
+  for (Figure& f : surface_figures(data)) figures.push_back(std::move(f));
   return figures;
 }
 
