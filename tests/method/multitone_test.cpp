@@ -62,7 +62,6 @@ SquarePowers square_powers() {
   }
   SquarePowers out;
   for (const auto& [k, z] : lines) {
-    // At 48 kHz what is above 24 kHz folds; sums reach 35.6 kHz and fold onto 12 kHz and more.
     if (k < 20 || k > 20000) continue;
     (on_mains(k) ? out.mains : out.even) += 0.5 * std::norm(z);
   }
