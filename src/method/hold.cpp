@@ -50,7 +50,7 @@ HeldStimulus held_tones(std::span<const Tone> tones, Hertz rate, std::size_t blo
   const bool has_tail = tail_blocks > 0 && !tail_tones.empty();
 
   HeldStimulus out;
-  out.hold = {2 * margin + ramp, block, blocks};
+  out.hold = held_layout(lowest_of(tones), rate, block, blocks);
   const std::size_t open = margin + ramp;
   const std::size_t close = out.hold.end() + margin;
   std::size_t last_close = close;
@@ -66,6 +66,27 @@ HeldStimulus held_tones(std::span<const Tone> tones, Hertz rate, std::size_t blo
       out.wave.samples[n] += tone.peak * envelope(n, open, end, ramp) *
                              cosine(tone.frequency, rate, n, out.hold.first_block);
     }
+  }
+  return out;
+}
+
+HoldLayout held_layout(Hertz lowest, Hertz rate, std::size_t block, int blocks) {
+  return {2 * samples_in(kHoldMargin, rate) + samples_in(ramp_length(lowest), rate), block, blocks};
+}
+
+HeldStimulus held_period(std::span<const double> period, Hertz lowest, Hertz rate, int blocks) {
+  const std::size_t margin = samples_in(kHoldMargin, rate);
+  const std::size_t ramp = samples_in(ramp_length(lowest), rate);
+  HeldStimulus out;
+  out.hold = held_layout(lowest, rate, period.size(), blocks);
+  const std::size_t close = out.hold.end() + margin;
+  out.wave.rate = rate;
+  out.wave.samples.assign(close + ramp + margin, 0.0);
+  // Where in the period the first sample would stand, so that a block begins at hold.first_block.
+  const std::size_t lead = period.size() - out.hold.first_block % period.size();
+  for (std::size_t n = margin; n < close + ramp; ++n) {
+    out.wave.samples[n] =
+        period[(n + lead) % period.size()] * envelope(n, margin + ramp, close, ramp);
   }
   return out;
 }

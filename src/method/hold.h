@@ -34,4 +34,9 @@ struct HeldStimulus {
 HeldStimulus held_tones(std::span<const Tone> tones, Hertz rate, std::size_t block, int blocks,
                         std::span<const Tone> tail_tones = {}, int tail_blocks = 0);
 
+/// Where held_tones() and held_period() put the blocks, without making a sample.
+HoldLayout held_layout(Hertz lowest, Hertz rate, std::size_t block, int blocks);
+/// One block repeated under the same silence, rise and fall; `lowest` tone of it sets the ramps.
+HeldStimulus held_period(std::span<const double> period, Hertz lowest, Hertz rate, int blocks);
+
 }  // namespace kneeprint

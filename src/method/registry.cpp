@@ -4,6 +4,7 @@
 #include "method/difference.h"
 #include "method/method.h"
 #include "method/modulation.h"
+#include "method/multitone.h"
 #include "method/steady.h"
 
 namespace kneeprint {
@@ -13,6 +14,7 @@ std::span<const Method> methods() {
       steady_sine(),
       smpte_modulation(),
       ccif_difference(),
+      multitone(),
   };
   return table;
 }
