@@ -68,6 +68,13 @@ struct Stimulus {
   /// periodic, and the method's own reading looks for them where it can.
   HoldLayout hold;
   Hertz lowest_tone{0.0};
+  /// Samples that the reading uses, settling included; 0: those of the hold.
+  std::size_t read = 0;
+
+  Seconds read_length() const {
+    const std::size_t n = read > 0 ? read : hold.end() - hold.first_block;
+    return Seconds(static_cast<double>(n) / wave.rate.value());
+  }
 };
 
 /// One recorded response, aligned to its stimulus to the nearest sample.
@@ -98,6 +105,7 @@ struct RigView {
 struct TakeVerdict {
   bool settled = true;
   bool clipped = false;
+  Seconds settling{0.0};                ///< of the hold, left out of the averages
   std::optional<double> thd_f_percent;  ///< steady methods
   std::optional<double> output_level;   ///< of the fundamental, in the return's unit
   /// By how much longer the hold must be for the wanted uncertainty of every wanted order; at most

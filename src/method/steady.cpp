@@ -404,6 +404,7 @@ TakeVerdict SteadyReading::read(Curves& out) {
   LevelPoint level;
   TakeVerdict verdict;
   verdict.settled = settled.settled;
+  verdict.settling = first_ * block;
   verdict.clipped = reaches_full_scale(take_.response, layout_);
   if (!settled.settled) take_flag_ = Flag::unsteady;
   if (verdict.clipped) take_flag_ = Flag::clipped;

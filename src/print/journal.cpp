@@ -64,8 +64,8 @@ JournalBegin read_begin(const JsonFields& fields) {
 
 JournalTake read_take(const JsonFields& fields) {
   fields.allow_only({"event", "number", "file", "crc32", "method", "frequency_hz", "rung",
-                     "send_dbfs", "hold_s", "delay_samples", "attempts", "started", "ended",
-                     "guard"});
+                     "send_dbfs", "hold_s", "delay_samples", "attempts", "sound_s", "read_s",
+                     "settling_s", "tail_s", "discarded_s", "started", "ended", "guard"});
   constexpr int kMany = 1000000;
   JournalTake take;
   take.number = fields.integer("number", 0, kMany);
@@ -78,6 +78,14 @@ JournalTake read_take(const JsonFields& fields) {
   take.hold_s = fields.number("hold_s");
   take.delay_samples = fields.number("delay_samples");
   take.attempts = fields.integer("attempts", 1, kMany);
+  const auto seconds = [&](const char* name) {
+    return fields.has(name) ? fields.number(name) : 0.0;  // journals of before do not say
+  };
+  take.sound_s = seconds("sound_s");
+  take.read_s = seconds("read_s");
+  take.settling_s = seconds("settling_s");
+  take.tail_s = seconds("tail_s");
+  take.discarded_s = seconds("discarded_s");
   take.started = fields.text("started");
   take.ended = fields.text("ended");
   take.guard = fields.text("guard");
@@ -113,6 +121,11 @@ std::string journal_line(const JournalTake& take) {
                  {"hold_s", finite(take.hold_s)},
                  {"delay_samples", finite(take.delay_samples)},
                  {"attempts", take.attempts},
+                 {"sound_s", finite(take.sound_s)},
+                 {"read_s", finite(take.read_s)},
+                 {"settling_s", finite(take.settling_s)},
+                 {"tail_s", finite(take.tail_s)},
+                 {"discarded_s", finite(take.discarded_s)},
                  {"started", take.started},
                  {"ended", take.ended},
                  {"guard", take.guard}});

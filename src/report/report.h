@@ -3,6 +3,7 @@
 #pragma once
 
 #include <filesystem>
+#include <map>
 #include <optional>
 #include <string>
 #include <vector>
@@ -23,6 +24,7 @@ struct ReportData {
   Curves curves;
   std::optional<Model> model;  ///< empty when nothing could be fitted; `why_no_model` then says why
   std::string why_no_model;
+  std::map<std::string, std::string> method_titles;  ///< by id
 };
 
 /// The figures of the page, in order, as far as the data reach.

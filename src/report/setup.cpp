@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <fmt/format.h>
+#include <fmt/ranges.h>
 
 #include <algorithm>
 #include <cmath>
@@ -34,17 +35,20 @@ std::string level_text(const PlanLevel& level) {
   return short_text(level.value) + " " + unit_text(level.unit);
 }
 
-std::string method_text(const std::string& id) {
-  if (id == "steady") return "steady sine";
-  if (id == "smpte") return "two-tone, 60 Hz and 7 kHz, 4:1 (SMPTE)";
-  if (id == "ccif") return "two-tone, 19 and 20 kHz, 1:1 (CCIF)";
-  return id;
-}
-
-std::string methods_text(const Plan& plan) {
-  std::string text;
-  for (const auto& step : plan.steps) text += (text.empty() ? "" : "; ") + method_text(step.method);
-  return text.empty() ? "none" : text;
+/// A method's title with the tones that the plan gives it, each once.
+std::string methods_text(const ReportData& data) {
+  std::vector<std::string> titles;
+  for (const StepPlan& step : data.plan.steps) {
+    const auto known = data.method_titles.find(step.method);
+    std::string title = known == data.method_titles.end() ? step.method : known->second;
+    if (!step.options.tones.empty()) {
+      title += fmt::format(" ({} and {})", frequency_text(step.options.tones[0].value()),
+                           frequency_text(step.options.tones[1].value()));
+    }
+    if (step.every > 1) title += fmt::format(", at every {}th rung", step.every);
+    titles.push_back(std::move(title));
+  }
+  return titles.empty() ? "none" : fmt::format("{}", fmt::join(titles, "; "));
 }
 
 std::string full_scale_text(const LevelScale& scale) {
@@ -106,6 +110,28 @@ std::string takes_text(const Journal& journal) {
                      repeated == 0 ? "none" : std::to_string(repeated));
 }
 
+/// How the seconds of sound were spent. Integration is what the averages used.
+std::string seconds_text(const Journal& journal) {
+  double integration = 0, settling = 0, ramps = 0, gaps = 0, again = 0;
+  for (const JournalTake& t : journal.takes) {
+    if (t.rung < 0 || t.sound_s <= 0.0) continue;
+    integration += t.read_s - t.settling_s;
+    settling += t.settling_s;
+    ramps += t.sound_s - t.read_s;
+    gaps += t.tail_s;
+    again += t.discarded_s + (t.attempts - 1) * t.sound_s;
+  }
+  const double all = integration + settling + ramps + gaps + again;
+  if (!(all > 0.0)) return "not stated";
+  const auto share = [&](const char* what, double seconds) {
+    return fmt::format("{} {} %", what, fixed_text(100.0 * seconds / all, 1));
+  };
+  return fmt::format("{} s: {}, {}, {}, {}, {}", fixed_text(all, 0),
+                     share("integration", integration), share("settling", settling),
+                     share("ramps and margins", ramps), share("gaps for the rig's delay", gaps),
+                     share("plays made again for longer holds or after losses", again));
+}
+
 std::string ends_text(const Plan& plan) {
   std::string text = "at its top";
   if (plan.stop_thd_f_percent)
@@ -154,7 +180,7 @@ Section setup_section(const ReportData& data) {
   add("rig", fmt::format("{} ({})", or_not_stated(rig.name), kind_text(rig.kind)));
   if (!rig.device.empty()) add("device", rig.device);
   add("plan", or_not_stated(plan.name));
-  add("methods", methods_text(plan));
+  add("methods", methods_text(data));
   add("ladder", ladder_text(data));
   add("ladder ends", ends_text(plan));
   add("frequencies asked", frequencies_text(data));
@@ -167,6 +193,7 @@ Section setup_section(const ReportData& data) {
                               short_text(plan.longest_time_constant.value()),
                               short_text(plan.settle_limit.value())));
   add("takes", takes_text(data.journal));
+  add("seconds of sound", seconds_text(data.journal));
   add("source impedance", ohms_text(rig.source_impedance));
   add("load", ohms_text(rig.load_impedance));
   add("wiring", or_not_stated(rig.wiring));

@@ -74,7 +74,7 @@ class Climb {
   void warm_up();
   void check_chain();
   TakeVerdict take(const TakeSpec& first);
-  TakeVerdict play(const TakeSpec& spec, std::vector<Waveform>& response, int& attempts);
+  TakeVerdict play(const TakeSpec& spec, std::vector<Waveform>& response, JournalTake& kept);
   std::vector<Waveform> record(const Waveform& stimulus, std::size_t tail, int number);
   void announce(const TakeSpec& spec);
   std::optional<ClimbEnd> climb_up(std::size_t& highest);
@@ -226,7 +226,7 @@ void Climb::announce(const TakeSpec& spec) {
 }
 
 // Plays until a take is whole: at most three times when the driver or the take itself shows a loss.
-TakeVerdict Climb::play(const TakeSpec& spec, std::vector<Waveform>& response, int& attempts) {
+TakeVerdict Climb::play(const TakeSpec& spec, std::vector<Waveform>& response, JournalTake& kept) {
   const int number = spec.number;
   const Hertz rate = request_.rig.rate;
   const Stimulus stimulus = find_method(spec.method)->stimulus(spec, rate);
@@ -234,7 +234,11 @@ TakeVerdict Climb::play(const TakeSpec& spec, std::vector<Waveform>& response, i
   const std::size_t tail =
       static_cast<std::size_t>(std::max(0L, delay)) + samples_in(kAfterTake, rate);
   double jumped_at = -1.0;
-  for (attempts = 1; attempts <= kMostAttempts; ++attempts) {
+  kept.discarded_s += kept.sound_s;
+  kept.sound_s = stimulus.wave.duration().value();
+  kept.read_s = stimulus.read_length().value();
+  kept.tail_s = static_cast<double>(tail) / rate.value();
+  for (kept.attempts = 1; kept.attempts <= kMostAttempts; ++kept.attempts) {
     std::vector<Waveform> recorded = record(stimulus.wave, tail, number);
     if (recorded.empty()) {
       progress_.say(fmt::format("take {}: the driver lost frames; it is made again", number));
@@ -308,7 +312,7 @@ TakeVerdict Climb::take(const TakeSpec& first) {
     std::vector<Waveform> response;
     while (true) {
       announce(spec);
-      verdict = play(spec, response, kept.attempts);
+      verdict = play(spec, response, kept);
       const int next = longer_hold(spec.hold_blocks, verdict, most);
       if (next <= spec.hold_blocks) break;
       spec.hold_blocks = next;
@@ -320,6 +324,7 @@ TakeVerdict Climb::take(const TakeSpec& first) {
     kept.rung = spec.rung;
     kept.send_dbfs = spec.send.value();
     kept.hold_s = spec.hold_blocks * block.value();
+    kept.settling_s = verdict.settling.value();
     kept.delay_samples = chain_.delay - static_cast<double>(std::lround(chain_.delay));
     kept.ended = os::utc_now();
     return_peak_ = std::max(return_peak_, peak_dbfs(response.front()));

@@ -52,10 +52,14 @@ Model fit_folder(const std::filesystem::path& path) {
 
 void report_folder(const std::filesystem::path& path, const std::string& why_no_model) {
   const Opened o = open(path);
-  ReportData data{
-      o.plan,       o.rig,
-      o.journal,    read_curves(o.folder.curves()),
-      std::nullopt, why_no_model.empty() ? "no fit was made (run `kneeprint fit`)" : why_no_model};
+  ReportData data{o.plan,
+                  o.rig,
+                  o.journal,
+                  read_curves(o.folder.curves()),
+                  std::nullopt,
+                  why_no_model.empty() ? "no fit was made (run `kneeprint fit`)" : why_no_model,
+                  {}};
+  for (const Method& m : methods()) data.method_titles.emplace(m.id, m.title);
   if (why_no_model.empty() && std::filesystem::exists(o.folder.model_file())) {
     data.model = read_model(o.folder.model_file());
   }

@@ -180,7 +180,7 @@ TEST_CASE("takes are held until the wanted uncertainty of harmonics is reached o
   const auto harmonics = run.curves().harmonics;
   REQUIRE(levels.size() == 5);
   CHECK(levels.front().integration == "time-spent");  // H3 is far under the noise there
-  CHECK(levels.front().blocks == 13);  // of 0.6 s: all that 8 s hold
+  CHECK(levels.front().blocks == 13);                 // of 0.6 s: all that 8 s hold
   CHECK(levels.back().integration == "reached");
   CHECK(levels.back().blocks == 4);
   for (const HarmonicPoint& h : harmonics) {
@@ -202,4 +202,23 @@ TEST_CASE("a ladder that descends takes the steady steps again, and resumes to t
   run.request.resume = true;
   run.climb();
   CHECK(levels_csv(run.curves()) == before);
+}
+
+TEST_CASE("for a unit without memory four fifths of the time are integration") {
+  Plan plan = small_plan();
+  plan.steps = {
+      {"steady", {Hertz(41.0), Hertz(997.0), Hertz(4990.0)}}, {"smpte", {}}, {"ccif", {}}};
+  plan.blocks = 4;
+  Run run("sigmoid", plan);
+  run.climb();
+  const Journal journal = read_journal(PrintFolder(run.request.into).journal_file(), false);
+  double sound = 0.0, integration = 0.0;
+  for (const JournalTake& t : journal.takes) {
+    if (t.rung < 0) continue;
+    CHECK(t.read_s > 0.0);
+    CHECK(t.sound_s > t.read_s);
+    sound += t.sound_s + t.tail_s + t.discarded_s;
+    integration += t.read_s - t.settling_s;
+  }
+  CHECK(integration >= 0.8 * sound);
 }
