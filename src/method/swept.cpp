@@ -122,7 +122,8 @@ class SweptReading {
   TakeVerdict read(Curves& out);
 
  private:
-  // One order's responses, by fundamental: sample values (peak) with their type A uncertainty.
+  // One order's responses, by fundamental, as they left the unit (the return's share of the rig's
+  // response taken out): sample values (peak) with their type A uncertainty.
   using Order = std::vector<Line>;
   Order order_of(const SweepResponses& responses, const SweepScatter& scatter, int n) const;
   SweepScatter scatter_of(const Waveform& take, int orders) const;
@@ -170,7 +171,8 @@ SweptReading::Order SweptReading::order_of(const SweepResponses& responses,
     const OrderResponse r = responses.read(n, group);
     for (std::size_t g = 0; g < group.size(); ++g) {
       const Contribution c = scatter.u(n, group[g], r.window_energy);
-      out.push_back({r.gain[g], c.u, c.dof});
+      const std::complex<double> share = rig_.response.ret(n * group[g]).response;
+      out.push_back({r.gain[g] / share, c.u / std::abs(share), c.dof});
     }
     if (group.size() < kGroup) break;
   }
@@ -230,8 +232,9 @@ double SweptReading::speed_u(int n, std::size_t i) const {
 // every order of the response. The offset that goes with order 2 of a square law is as large as it.
 std::vector<double> SweptReading::floor_at(std::size_t i) const {
   const double carrier = std::abs(at(1, i)->mean);
-  const LevelDbfs returned(20.0 * std::log10(carrier));
-  const auto loop = [&](int n) { return rig_.floor.at(spec_.send, returned, n); };
+  const Hertz f = fundamentals_[i];
+  const LevelDbfs returned(20.0 * std::log10(carrier * std::abs(rig_.response.ret(f).response)));
+  const auto loop = [&](int n) { return rig_.floor.at(spec_.send, returned, n, f); };
   if (!loop(2) || !loop(3)) return {};
   std::vector<std::complex<double>> harmonics{0.0};
   for (int n = 1; n <= spec_.settings.orders; ++n) {
@@ -247,7 +250,10 @@ std::vector<double> SweptReading::floor_at(std::size_t i) const {
 }
 
 double SweptReading::drive_at(std::size_t i) const {
-  if (reference_.empty()) return rig_.send.level_of(spec_.send);
+  if (reference_.empty()) {
+    const double send = std::abs(rig_.response.send(fundamentals_[i]).response);
+    return rig_.send.level_of(spec_.send) + Decibels::of_ratio(send).value();
+  }
   return rig_.ret.level_of_peak(std::abs(reference_[i].mean));
 }
 
@@ -271,6 +277,11 @@ ResponsePoint SweptReading::row(int n, std::size_t i, double floor) const {
   std::vector<Contribution> parts{{kDbPerRelative * r.u / r.ratio, r.dof},
                                   {kDbPerRelative * speed_u(n, i), kInfiniteDof},
                                   {rig_.ret.standard_uncertainty.value(), kInfiniteDof}};
+  // Send and return together are what the loop showed: their split touches harmonics alone.
+  if (n > 1) {
+    const Hertz f = fundamentals_[i];
+    parts.push_back({rig_.response.ret_ratio(n * f, f).u.value(), kInfiniteDof});
+  }
   if (reference_.empty()) {
     parts.push_back({rig_.send.standard_uncertainty.value(), kInfiniteDof});
   } else {
@@ -284,8 +295,9 @@ ResponsePoint SweptReading::row(int n, std::size_t i, double floor) const {
     if (carrier < kLeastOverNoise * fundamental.u) return p;
     p.phase_deg = wrapped_degrees(std::arg(line.mean) - n * std::arg(fundamental.mean));
   } else if (reference_.empty()) {
-    p.phase_deg = wrapped_degrees(std::arg(line.mean) + 2.0 * std::numbers::pi * p.frequency_hz *
-                                                            take_.delay / rate_.value());
+    const double sent = std::arg(rig_.response.send(fundamentals_[i]).response);
+    const double turns = p.frequency_hz * take_.delay / rate_.value();
+    p.phase_deg = wrapped_degrees(std::arg(line.mean) - sent + 2.0 * std::numbers::pi * turns);
   } else {
     p.phase_deg = wrapped_degrees(std::arg(line.mean / reference_[i].mean));
   }

@@ -18,6 +18,7 @@
 //                  expansion of the filter's response). How much of the response stands before the
 //                  curve is unknown: all of it is the bound, taken n times for order n. It shrinks
 //                  as the sweep gets longer.
+// The rig's own response, where a loop showed it, is taken out as for steady sines.
 // With a reference return, drive and input are the reference's own response.
 #pragma once
 
