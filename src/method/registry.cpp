@@ -6,6 +6,7 @@
 #include "method/modulation.h"
 #include "method/multitone.h"
 #include "method/steady.h"
+#include "method/swept.h"
 
 namespace kneeprint {
 
@@ -15,6 +16,7 @@ std::span<const Method> methods() {
       smpte_modulation(),
       ccif_difference(),
       multitone(),
+      swept_sine(),
   };
   return table;
 }
