@@ -11,10 +11,8 @@ namespace kneeprint {
 
 std::span<const Method> methods() {
   static const std::array table{
-      steady_sine(),
-      smpte_modulation(),
-      ccif_difference(),
-      multitone(),
+      steady_sine(),     smpte_modulation(), din_modulation(), modulation(),
+      ccif_difference(), total_difference(), multitone(),
   };
   return table;
 }

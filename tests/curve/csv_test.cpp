@@ -108,7 +108,7 @@ TEST_CASE("headers: the columns that scripts rely on, then the further ones") {
         "direction\n");
   CHECK(intermod_csv(none) ==
         "method,f1_hz,f2_hz,drive,level_unit,product,percent,db,expanded_u_db,floor_db,flag,"
-        "am_percent,pm_percent,blocks,settled_after_s\n");
+        "am_percent,pm_percent,blocks,settled_after_s,ratio\n");
   CHECK(response_csv(none) == std::string(kResponseHeader) + "\n");
   const auto text = [&](std::string_view file) {
     const auto tables = csv_tables();
