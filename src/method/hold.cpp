@@ -22,10 +22,10 @@ double envelope(std::size_t n, std::size_t start, std::size_t end, std::size_t r
 }
 
 // Phase counted from `origin` modulo whole cycles, in exact arithmetic where f * n / rate is.
-double cosine(const Tone& tone, Hertz rate, std::size_t n, std::size_t origin) {
-  const double turns = tone.frequency.value() *
-                       (static_cast<double>(n) - static_cast<double>(origin)) / rate.value();
-  return std::cos(2.0 * std::numbers::pi * (turns - std::floor(turns)) + tone.phase);
+double cosine(Hertz f, Hertz rate, std::size_t n, std::size_t origin) {
+  const double turns =
+      f.value() * (static_cast<double>(n) - static_cast<double>(origin)) / rate.value();
+  return std::cos(2.0 * std::numbers::pi * (turns - std::floor(turns)));
 }
 
 Hertz lowest_of(std::span<const Tone> tones) {
@@ -63,8 +63,8 @@ HeldStimulus held_tones(std::span<const Tone> tones, Hertz rate, std::size_t blo
   for (const Tone& tone : tones) {
     const std::size_t end = has_tail && sounds_on(tone, tail_tones) ? last_close : close;
     for (std::size_t n = margin; n < end + ramp; ++n) {
-      out.wave.samples[n] +=
-          tone.peak * envelope(n, open, end, ramp) * cosine(tone, rate, n, out.hold.first_block);
+      out.wave.samples[n] += tone.peak * envelope(n, open, end, ramp) *
+                             cosine(tone.frequency, rate, n, out.hold.first_block);
     }
   }
   return out;

@@ -12,8 +12,7 @@ namespace kneeprint {
 
 struct Tone {
   Hertz frequency;
-  double peak = 0.0;   ///< sample value
-  double phase = 0.0;  ///< radians; of the cosine at the first block's start
+  double peak = 0.0;  ///< sample value; cosine, phase 0 at the first block's start
 };
 
 /// At least 20 ms and 4 periods of the lowest tone: shorter ramps drive a transformer's flux to 1.8

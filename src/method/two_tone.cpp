@@ -243,7 +243,7 @@ TwoToneReading::Part TwoToneReading::single(ProductIndex p, const Reference& ref
   part.limit = amplitude_upper_limit(part.amplitude, l.u);
   part.split_u = rig_.response.ret_ratio(frequency(p), tones_.f2).u.value() / kDbPerRelative;
   part.floor = rig_floor(p, reference);
-  part.alone = alone(p);
+  if (p.k1 != 0) part.alone = alone(p);  // harmonics of f2 need no f1
   return part;
 }
 
