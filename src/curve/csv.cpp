@@ -117,6 +117,7 @@ std::span<const Column<IntermodPoint>> columns() {
       {"pm_percent", &P::pm_percent},
       {"blocks", &P::blocks},
       {"settled_after_s", &P::settled_after_s},
+      {"ratio", &P::ratio},
   };
   return list;
 }

@@ -70,16 +70,19 @@ struct LevelPoint {
 };
 
 struct IntermodPoint {
-  std::string method;  ///< smpte, ccif, ...
+  std::string method;  ///< smpte, din, modulation, ccif, tdfd, square-sine, dim-30, dim-100
   double f1_hz = 0.0, f2_hz = 0.0;
   double drive = 0.0;  ///< rms of the sine with the same peak
   LevelUnit unit = LevelUnit::dbfs;
-  std::string product;  ///< m2, m3, d2, d3, total
+  /// m2, m3, d2, d3, total; their root-sum-of-squares forms m2-rss, m3-rss, d3-rss, total-rss;
+  /// square-sine, dim-30, dim-100.
+  std::string product;
   Cell percent, db, expanded_u_db, floor_db;
   Flag flag = Flag::none;
   Cell am_percent, pm_percent;  ///< the pair's amplitude and phase modulation parts
   int blocks = 0;               ///< averaged
   double settled_after_s = 0.0;
+  double ratio = 1.0;           ///< amplitude of f1 over that of f2, as played
 };
 
 struct ResponsePoint {

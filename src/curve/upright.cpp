@@ -37,6 +37,9 @@ void make_upright(Curves& curves, int polarity) {
   for (ResponsePoint& p : curves.responses) {
     if (p.order % 2 == 0) half_turn(p.phase_deg);
   }
+  for (ProductPoint& p : curves.products) {
+    if (p.order % 2 == 0) half_turn(p.phase_deg);
+  }
   for (LevelPoint& p : curves.levels) {
     if (p.dc) *p.dc = -*p.dc;
   }
@@ -52,6 +55,7 @@ void make_relative(Curves& curves, double asked_hz) {
   if (lowest == nullptr) {
     for (LevelPoint& p : curves.levels) p.output = p.noise = std::nullopt;
     for (HarmonicPoint& p : curves.harmonics) p.level = std::nullopt;
+    for (ProductPoint& p : curves.products) p.level = std::nullopt;
     return;
   }
   const double reference = lowest->output.value();
@@ -72,6 +76,7 @@ void make_relative(Curves& curves, double asked_hz) {
     p.quadrature *= scale;
     p.component_u *= scale;
   }
+  for (ProductPoint& p : curves.products) shift(p.level);
 }
 
 std::optional<bool> depends_on_frequency(const Curves& curves) {

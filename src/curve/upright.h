@@ -13,8 +13,8 @@ namespace kneeprint {
 int stated_polarity(const Curves& curves, double asked_hz);
 
 /// For an inverting unit (-1) the response is negated before phases are referred to its
-/// fundamental, which turns every even order by 180 degrees and DC by its sign. +1 and 0 leave all
-/// as it is.
+/// fundamental (those of products: to both tones), which turns every even order by 180 degrees and
+/// DC by its sign. +1 and 0 leave all as it is.
 void make_upright(Curves& curves, int polarity);
 
 /// A reel without declared levels: outputs become dB above the fundamental of the lowest usable

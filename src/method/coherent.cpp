@@ -1,9 +1,13 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "method/coherent.h"
 
+#include <fmt/format.h>
+
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 
+#include "quantity/failure.h"
 #include "signal/waveform.h"
 
 namespace kneeprint {
@@ -89,6 +93,39 @@ std::size_t common_block(std::span<const Hertz> tones, Hertz rate, Seconds wante
   const std::size_t limit = samples_in(kLongestBlock, rate);
   while (!fits(block) && block < limit) block += grid;
   return block;
+}
+
+CoherentPair coherent_pair(Hertz f1, Hertz f2, Hertz rate, Seconds wanted) {
+  constexpr double kExact = 1e-9;
+  constexpr Seconds kWholeHertz{2.0};  // an even number of cycles of every whole frequency
+  const std::size_t grid = std::max<std::size_t>(1, samples_in(kGrid, rate));
+  const std::size_t first = (samples_in(wanted, rate) + grid - 1) / grid * grid;
+  const auto shortest_within = [&](Seconds longer, double shift) -> CoherentPair {
+    const std::size_t last = first + samples_in(longer, rate);
+    for (std::size_t block = first; block <= last; block += grid) {
+      const double bin = rate.value() / static_cast<double>(block);
+      const double c1 = std::round(f1.value() / bin), c2 = std::round(f2.value() / bin);
+      const auto near = [&](double cycles, Hertz f) {
+        return std::abs(cycles * bin - f.value()) <= shift * f.value();
+      };
+      if (!(c1 >= 1.0 && c2 > c1) || !near(c1, f1) || !near(c2, f2) || !near(c2 - c1, f2 - f1)) {
+        continue;
+      }
+      const auto n1 = static_cast<std::size_t>(c1), n2 = static_cast<std::size_t>(c2);
+      if (std::gcd(n1, n2) < 2) continue;
+      if (shift <= kExact) return {f1, f2, block, n1, n2};
+      return {Hertz(c1 * bin), Hertz(c2 * bin), block, n1, n2};
+    }
+    return {};
+  };
+  for (const CoherentPair& pair :
+       {shortest_within(kWholeHertz, kExact), shortest_within(kLongestBlock, kLargestShift)}) {
+    if (pair.block != 0) return pair;
+  }
+  throw InputError(fmt::format(
+      "tones {} and {} Hz: no block of up to {:g} s holds whole cycles of both at {} Hz; "
+      "expected a lower and a higher tone, whole hertz apart",
+      f1.value(), f2.value(), (wanted + kLongestBlock).value(), rate.value()));
 }
 
 }  // namespace kneeprint

@@ -28,4 +28,17 @@ CoherentTone coherent_tone(Hertz asked, Hertz rate, Seconds wanted, int orders);
 /// one part in 10^9). Tones are multiples of 1 Hz at the usual rates, so 1 s always serves.
 std::size_t common_block(std::span<const Hertz> tones, Hertz rate, Seconds wanted);
 
+struct CoherentPair {
+  Hertz f1{0.0}, f2{0.0};  ///< as played
+  std::size_t block = 0;   ///< samples
+  std::size_t cycles1 = 0, cycles2 = 0;
+};
+
+/// Two tones of which whole cycles fill a block at least `wanted` long, with at least every second
+/// bin free of their products, so that the noise shows. Exactly those asked for where a block at
+/// most 2 s longer holds them (whole hertz); else the shortest block, up to 10 s longer, in which
+/// neither tone nor their difference is shifted by more than 0.1 %. Throws InputError when there is
+/// none: tones under 1 Hz, equal, or too close.
+CoherentPair coherent_pair(Hertz f1, Hertz f2, Hertz rate, Seconds wanted);
+
 }  // namespace kneeprint

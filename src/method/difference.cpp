@@ -8,54 +8,68 @@
 namespace kneeprint {
 namespace {
 
-constexpr TonePair kCcif{"ccif", Hertz(19000.0), Hertz(20000.0), 0.5, 0.5, false};
+constexpr TonePair kCcif{"ccif", Hertz(19000.0), Hertz(20000.0)};
+constexpr TonePair kTotal{"tdfd", Hertz(8000.0), Hertz(11950.0)};
 
-// For a weakly curved rig at the same peak: d2 = HD2 / 2 and d3 = 3/4 HD3 (expansion of a cubic
-// with U = P / 2: a2 U / 2 a1 over a2 P / 2 a1, and 3/4 a3 U^2 / a1 over a3 P^2 / 4 a1).
-constexpr double kSecondOverHarmonic = 0.5;
-constexpr double kThirdOverHarmonic = 0.75;
+constexpr std::array kSecond{ProductIndex{-1, 1}};
+constexpr std::array kThird{ProductIndex{2, -1}, ProductIndex{-1, 2}};
+constexpr std::array kThirdLower{ProductIndex{2, -1}};
 
-TakeVerdict read(const TakeSpec& spec, const TakeData& take, const RigView& rig, Curves& out) {
-  const TwoToneReading reading(kCcif, spec, take, rig);
+TakeVerdict read(const TonePair& pair, const TakeSpec& spec, const TakeData& take,
+                 const RigView& rig, Curves& out) {
+  const TwoToneReading reading(pair, spec, take, rig);
   if (!reading.has_tones()) return reading.verdict();
-  const auto floor = [&](int order, double factor) {
-    return factor * rig.floor.at(spec.send, reading.return_level(), order).value_or(0.0);
-  };
-  const Line low = reading.product({1, 0}), high = reading.product({0, 1});
-  const std::array parts{Contribution{low.u, low.dof}, Contribution{high.u, high.dof}};
-  const Contribution c = combine(parts);
-  const Line both{std::abs(low.mean) + std::abs(high.mean), c.u, c.dof};
-  const auto d2 = reading.single("d2", {-1, 1}, both, floor(2, kSecondOverHarmonic));
-  const auto d3 = reading.sum("d3", {ProductIndex{2, -1}, ProductIndex{-1, 2}}, both,
-                              floor(3, kThirdOverHarmonic));
-  out.intermods.push_back(d2.point);
-  out.intermods.push_back(d3.point);
-  out.intermods.push_back(reading.total(d2, d3));
+  const auto both = reading.both_tones();
+  const auto d2 = reading.arithmetic_sum("d2", kSecond, both);
+  const auto d3 = reading.arithmetic_sum("d3", kThird, both);
+  const auto d3_rss = reading.root_sum("d3-rss", kThird, both);
+  for (const IntermodPoint& row : {d2.point, d3.point, reading.total("total", d2, d3), d3_rss.point,
+                                   reading.total("total-rss", d2, d3_rss)}) {
+    out.intermods.push_back(row);
+  }
+  reading.list_products(both, out.products);
   return reading.verdict();
 }
 
-std::vector<PredictedProduct> predict(const TwoToneCurve& curve, const StepOptions&, double peak) {
-  const auto a =
-      curve(kCcif.share1 * peak, kCcif.share2 * peak, {{1, 0}, {0, 1}, {-1, 1}, {2, -1}, {-1, 2}});
+std::vector<PredictedProduct> predict(const TonePair& pair, const TwoToneCurve& curve,
+                                      double peak) {
+  const auto a = curve(pair.share1() * peak, pair.share2() * peak,
+                       {{1, 0}, {0, 1}, {-1, 1}, {2, -1}, {-1, 2}});
   const double both = std::abs(a[0]) + std::abs(a[1]);
   const double d2 = std::abs(a[2]) / both;
   const double d3 = (std::abs(a[3]) + std::abs(a[4])) / both;
   return {{"d2", d2}, {"d3", d3}, {"total", std::hypot(d2, d3)}};
 }
 
+TakeVerdict read_total(const TonePair& pair, const TakeSpec& spec, const TakeData& take,
+                       const RigView& rig, Curves& out) {
+  const TwoToneReading reading(pair, spec, take, rig);
+  if (!reading.has_tones()) return reading.verdict();
+  const auto both = reading.both_tones();
+  out.intermods.push_back(reading.total("total", reading.arithmetic_sum("d2", kSecond, both),
+                                        reading.arithmetic_sum("d3-lower", kThirdLower, both)));
+  reading.list_products(both, out.products);
+  return reading.verdict();
+}
+
+std::vector<PredictedProduct> predict_total(const TonePair& pair, const TwoToneCurve& curve,
+                                            double peak) {
+  const auto a =
+      curve(pair.share1() * peak, pair.share2() * peak, {{1, 0}, {0, 1}, {-1, 1}, {2, -1}});
+  return {{"total", std::hypot(a[2], a[3]) / (std::abs(a[0]) + std::abs(a[1]))}};
+}
+
 }  // namespace
 
 Method ccif_difference() {
-  return {"ccif",
-          "difference-frequency distortion, 19 and 20 kHz, 1:1",
-          "IEC 60268-3; ITU-R twin tone",
-          Placement::every_rung,
-          {.id = "ccif"},
-          [](const TakeSpec& s, Hertz r) { return two_tone_first_hold_blocks(kCcif, s, r); },
-          [](const TakeSpec& s, Hertz r) { return two_tone_block_length(kCcif, s, r); },
-          [](const TakeSpec& s, Hertz r) { return two_tone_stimulus(kCcif, s, r); },
-          read,
-          predict};
+  return two_tone_method<kCcif, read, predict>(
+      "difference-frequency distortion, 19 and 20 kHz or the plan's pair, 1:1",
+      "IEC 60268-3; ITU-R twin tone", {.id = "ccif", .tones = true});
+}
+
+Method total_difference() {
+  return two_tone_method<kTotal, read_total, predict_total>(
+      "total difference-frequency distortion, 8 and 11.95 kHz, 1:1", "IEC 60268-3", {.id = "tdfd"});
 }
 
 }  // namespace kneeprint

@@ -137,6 +137,8 @@ struct Method {
   /// The same products by a memoryless curve, for the stimulus' peak at the unit's input; nullptr
   /// for methods that the fit itself uses, or that no closed rule predicts.
   std::vector<PredictedProduct> (*predict)(const TwoToneCurve&, const StepOptions&, double peak);
+  /// Throws InputError when the method cannot be played so at this rate; nullptr: no such limit.
+  void (*check)(const StepOptions&, Hertz rate) = nullptr;
 };
 
 std::span<const Method> methods();

@@ -30,6 +30,35 @@ RelativeReading relate(double amplitude, double u, double dof, const Line& refer
   return out;
 }
 
+RelativeReading root_sum_of(std::span<const RelativeReading> parts) {
+  double seen = 0.0, limits = 0.0;
+  bool any_seen = false, all_floor = true;
+  for (const RelativeReading& r : parts) {
+    (r.flag == Flag::noise ? limits : seen) += r.ratio * r.ratio;
+    if (r.flag == Flag::noise) continue;
+    any_seen = true;
+    all_floor &= r.flag == Flag::floor;
+  }
+  RelativeReading out;
+  out.ratio = std::sqrt(any_seen ? seen : limits);
+  if (!any_seen) out.flag = Flag::noise;
+  if (any_seen && all_floor) out.flag = Flag::floor;
+  if (!(out.ratio > 0.0)) return out;
+  std::vector<Contribution> terms;
+  for (const RelativeReading& r : parts) {
+    if (any_seen && r.flag == Flag::noise) continue;
+    terms.push_back({r.ratio * r.u / out.ratio, r.dof});
+  }
+  if (any_seen && limits > 0.0) {
+    const double most = std::sqrt(seen + limits) - out.ratio;
+    terms.push_back({most / (2.0 * std::sqrt(3.0)), kInfiniteDof});
+  }
+  const Contribution combined = combine(terms);
+  out.u = combined.u;
+  out.dof = combined.dof;
+  return out;
+}
+
 bool reaches_full_scale(const Waveform& take, const HoldLayout& hold) {
   constexpr double kEnd = 0.9999;
   const auto begin = take.samples.begin() + static_cast<long>(hold.first_block);

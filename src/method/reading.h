@@ -14,6 +14,9 @@ namespace kneeprint {
 inline constexpr double kDbPerRelative = 8.685889638065036;  // 20 / ln 10
 /// Lines from here up are not claimed (share of the sample rate).
 inline constexpr double kHighestShare = 0.45;
+/// Two-tone methods put tones up to 20 kHz and products just above: what a converter's own filter
+/// passes in the usual half-band design, 20 kHz at 44.1 kHz, can be read.
+inline constexpr double kConverterShare = 20000.0 / 44100.0;
 inline constexpr Hertz kBandLow{20.0};
 inline constexpr Hertz kBandHigh{20000.0};
 
@@ -29,6 +32,12 @@ struct RelativeReading {
 /// (0: unknown). The floor is a type B term of known amplitude and unknown phase, u = floor /
 /// sqrt 2.
 RelativeReading relate(double amplitude, double u, double dof, const Line& reference, double floor);
+
+/// Root sum of squares (u by JCGM 100:2008 eq. 10). Parts under the noise stay out of the value and
+/// widen the uncertainty: between none of them and all of them at their limits lies a rectangular
+/// distribution. All under the noise: the root sum of their limits, flagged noise; all at the
+/// floor: flagged so. No part: ratio 0.
+RelativeReading root_sum_of(std::span<const RelativeReading> parts);
 
 /// Does any sample reach the converter's end? |x| >= 0.9999 of full scale.
 bool reaches_full_scale(const Waveform& take, const HoldLayout& hold);

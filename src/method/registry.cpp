@@ -11,13 +11,18 @@
 namespace kneeprint {
 
 std::span<const Method> methods() {
+  // clang-format off
   static const std::array table{
       steady_sine(),
-      smpte_modulation(),
-      ccif_difference(),
-      multitone(),
       swept_sine(),
+      smpte_modulation(),
+      din_modulation(),
+      modulation(),
+      ccif_difference(),
+      total_difference(),
+      multitone(),
   };
+  // clang-format on
   return table;
 }
 

@@ -1,40 +1,74 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "method/two_tone.h"
 
+#include <fmt/format.h>
+
 #include <algorithm>
 #include <cmath>
+#include <numbers>
 #include <numeric>
 
-#include "method/coherent.h"
-#include "method/hold.h"
+#include "quantity/failure.h"
 
 namespace kneeprint {
 namespace {
 
 constexpr int kTailBlocks = 1;
+constexpr int kHighestOrder = 5;  // of the products listed
+constexpr double kDegrees = 180.0 / std::numbers::pi;
+constexpr double kTenDecibels = 3.1622776601683795;
 
-std::size_t block_of(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
-  const std::array tones{pair.f1, pair.f2};
-  return common_block(tones, rate, spec.settings.block);
-}
+// What the sum, and the root sum of squares, of two amplitudes of noise alone exceed in 5 % of
+// cases, over the root sum of their standard uncertainties (taken as equal): F(s) = 1 - exp(-s^2/2)
+// - sqrt(pi)/2 s exp(-s^2/4) erf(s/2) for the sum of two unit Rayleigh variates (convolution of
+// their densities) is 0.95 at s = 4.146052; chi of four degrees of freedom has it at 3.080216; both
+// over sqrt 2.
+constexpr double kNoiseSum95 = 2.931701830;
+constexpr double kNoiseRootSum95 = 2.178041441;
 
-std::size_t cycles_in(Hertz f, std::size_t block, Hertz rate) {
-  return static_cast<std::size_t>(
-      std::llround(f.value() * static_cast<double>(block) / rate.value()));
+CoherentPair coherent(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
+  return coherent_pair(pair.f1, pair.f2, rate, spec.settings.block);
 }
 
 HeldStimulus held(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
+  const CoherentPair played = coherent(pair, spec, rate);
   const double peak = sine_peak(spec.send);
-  const std::array tones{Tone{pair.f1, pair.share1 * peak}, Tone{pair.f2, pair.share2 * peak}};
+  const std::array tones{Tone{played.f1, pair.share1() * peak},
+                         Tone{played.f2, pair.share2() * peak}};
   const std::array alone{tones[1]};
-  return held_tones(tones, rate, block_of(pair, spec, rate), spec.hold_blocks, alone,
+  return held_tones(tones, rate, played.block, spec.hold_blocks, alone,
                     pair.f2_alone ? kTailBlocks : 0);
 }
 
 }  // namespace
 
+// One product, or several taken together.
+struct TwoToneReading::Part {
+  double amplitude = 0.0, u = 0.0, dof = kInfiniteDof;
+  double noise_threshold = 0.0;  // at most this: noise
+  double limit = 0.0;            // 95 % upper limit of the amplitude
+  double split_u = 0.0;          // relative, from the unknown split of the rig's response
+  double floor = 0.0;            // the rig's, relative to the reference; 0: unknown
+  std::optional<double> alone;   // with f2 alone
+  bool in_reach = true;
+  bool readable = true;
+};
+
+TonePair with_options(TonePair pair, const StepOptions& options) {
+  if (options.tones.size() == 2) {
+    pair.as_named &= options.tones[0] == pair.f1 && options.tones[1] == pair.f2;
+    pair.f1 = options.tones[0];
+    pair.f2 = options.tones[1];
+  }
+  if (options.ratio) {
+    pair.as_named &= *options.ratio == pair.ratio;
+    pair.ratio = *options.ratio;
+  }
+  return pair;
+}
+
 Seconds two_tone_block_length(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
-  return Seconds(static_cast<double>(block_of(pair, spec, rate)) / rate.value());
+  return Seconds(static_cast<double>(coherent(pair, spec, rate).block) / rate.value());
 }
 
 int two_tone_first_hold_blocks(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
@@ -43,29 +77,42 @@ int two_tone_first_hold_blocks(const TonePair& pair, const TakeSpec& spec, Hertz
 
 Stimulus two_tone_stimulus(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
   HeldStimulus h = held(pair, spec, rate);
-  return {std::move(h.wave), h.hold, std::min(pair.f1, pair.f2)};
+  return {std::move(h.wave), h.hold, pair.f1};
+}
+
+void check_pair(const TonePair& pair, Hertz rate) {
+  const double top = kConverterShare * rate.value();
+  if (pair.f2.value() > top * (1.0 + 1e-9)) {
+    throw InputError(
+        fmt::format("plan: method \"{}\" plays {} Hz, which a sample rate of {} Hz does not carry "
+                    "(at most {:.0f} Hz): lower the tone or raise the rate",
+                    pair.method, pair.f2.value(), rate.value(), top));
+  }
+  coherent_pair(pair.f1, pair.f2, rate, TakeSettings{}.block);
 }
 
 TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const TakeData& take,
                                const RigView& rig)
     : pair_(pair),
       rig_(rig),
+      send_(spec.send),
       rate_(take.response.rate),
-      hold_(held(pair, spec, rate_).hold),
-      tail_(held(pair, spec, rate_).tail),
-      cycles1_(cycles_in(pair.f1, hold_.block, rate_)),
-      cycles2_(cycles_in(pair.f2, hold_.block, rate_)),
-      spectra_(take.response, hold_, std::gcd(cycles1_, cycles2_)) {
-  if (tail_.blocks > 0) alone_spectra_.emplace(take.response, tail_, std::gcd(cycles1_, cycles2_));
+      tones_(coherent(pair, spec, rate_)),
+      held_(held(pair, spec, rate_)),
+      spectra_(take.response, held_.hold, std::gcd(tones_.cycles1, tones_.cycles2)),
+      products_(products_to_order(kHighestOrder, tones_.cycles1, tones_.cycles2)) {
+  const std::size_t stride = std::gcd(tones_.cycles1, tones_.cycles2);
+  if (held_.tail.blocks > 0) alone_spectra_.emplace(take.response, held_.tail, stride);
   std::vector<std::size_t> watched;
   for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
     if (in_reach(p)) watched.push_back(bin(p));
   }
-  const Settled settled = judge_settling(spectra_, watched, spec.settings,
-                                         Seconds(static_cast<double>(hold_.block) / rate_.value()));
+  const Settled settled =
+      judge_settling(spectra_, watched, spec.settings,
+                     Seconds(static_cast<double>(held_.hold.block) / rate_.value()));
   first_ = settled.first;
   verdict_.settled = settled.settled;
-  verdict_.clipped = reaches_full_scale(take.response, hold_);
+  verdict_.clipped = reaches_full_scale(take.response, held_.hold);
   if (!settled.settled) take_flag_ = Flag::unsteady;
   if (verdict_.clipped) take_flag_ = Flag::clipped;
 
@@ -77,159 +124,316 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
     return std::abs(l.mean) > kLeastOverNoise * l.u;
   };
   has_tones_ = present(tone1_) && present(tone2_);
+  const auto own = [&](Hertz f) { return std::abs(rig.response.ret(f).response); };
   // The return's converter sees the sum of both tones' peaks.
   if (has_tones_) {
-    return_level_ = LevelDbfs(20.0 * std::log10(std::abs(tone1_.mean) + std::abs(tone2_.mean)));
+    return_level_ = LevelDbfs(20.0 * std::log10(std::abs(tone1_.mean) * own(tones_.f1) +
+                                                std::abs(tone2_.mean) * own(tones_.f2)));
   }
-  drive_ = rig.send.level_of(spec.send);
+  const double sent = pair.share1() * std::abs(rig.response.send(tones_.f1).response) +
+                      pair.share2() * std::abs(rig.response.send(tones_.f2).response);
+  drive_ = rig.send.level_of(spec.send) + Decibels::of_ratio(sent).value();
   if (take.reference != nullptr) {
-    const BlockSpectra reference(*take.reference, hold_, std::gcd(cycles1_, cycles2_));
+    const BlockSpectra reference(*take.reference, held_.hold, stride);
     double peak = 0.0;
-    for (const std::size_t k : {cycles1_, cycles2_}) {
-      peak += std::abs(
-          reference.mean(k, first_, [&](int b) { return std::arg(reference.at(b, k)); }).mean);
+    for (const auto& [cycles, f] :
+         {std::pair(tones_.cycles1, tones_.f1), std::pair(tones_.cycles2, tones_.f2)}) {
+      const std::size_t k = cycles;
+      const Line line =
+          reference.mean(k, first_, [&](int b) { return std::arg(reference.at(b, k)); });
+      peak += std::abs(line.mean) / own(f);
     }
     drive_ = rig.ret.level_of_peak(peak);
   }
 }
 
 Hertz TwoToneReading::frequency(ProductIndex p) const {
-  return Hertz(std::abs(p.k1 * pair_.f1.value() + p.k2 * pair_.f2.value()));
+  return Hertz(std::abs(p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value()));
 }
 
 std::size_t TwoToneReading::bin(ProductIndex p) const {
-  return static_cast<std::size_t>(
-      std::abs(p.k1 * static_cast<long>(cycles1_) + p.k2 * static_cast<long>(cycles2_)));
+  return static_cast<std::size_t>(std::abs(p.k1 * static_cast<long>(tones_.cycles1) +
+                                           p.k2 * static_cast<long>(tones_.cycles2)));
 }
 
 bool TwoToneReading::in_reach(ProductIndex p) const {
-  // Two-tone methods put tones up to 20 kHz and products just above: what the converter's own
-  // filter passes (0.4535 of the rate in the usual half-band design) can be read.
-  constexpr double kConverterShare = 0.4535;
-  return frequency(p).value() <= kConverterShare * rig_.usable_rate(rate_).value();
+  constexpr double kRounding = 1.0 + 1e-9;
+  return frequency(p).value() <= kConverterShare * rig_.usable_rate(rate_).value() * kRounding;
 }
 
 double TwoToneReading::turn(ProductIndex p, int block) const {
-  const double turned =
-      p.k1 * std::arg(spectra_.at(block, cycles1_)) + p.k2 * std::arg(spectra_.at(block, cycles2_));
-  // A product at a negative frequency shows as the conjugate at the positive one.
-  return p.k1 * pair_.f1.value() + p.k2 * pair_.f2.value() < 0.0 ? -turned : turned;
+  return p.k1 * std::arg(spectra_.at(block, tones_.cycles1)) +
+         p.k2 * std::arg(spectra_.at(block, tones_.cycles2));
 }
 
 Line TwoToneReading::product(ProductIndex p) const {
-  return spectra_.mean(bin(p), first_, [&](int b) { return turn(p, b); });
+  // A product at a negative frequency shows as the conjugate at the positive one.
+  const bool negative = p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value() < 0.0;
+  const double sign = negative ? -1.0 : 1.0;
+  Line l = spectra_.mean(bin(p), first_, [&](int b) { return sign * turn(p, b); });
+  // The tones' own turns in the return are given back: their phases were taken as recorded.
+  const auto own = [&](Hertz f) { return rig_.response.ret(f).response; };
+  const std::complex<double> share =
+      own(frequency(p)) *
+      std::polar(1.0, -sign * (p.k1 * std::arg(own(tones_.f1)) + p.k2 * std::arg(own(tones_.f2))));
+  l.mean /= share;
+  l.u /= std::abs(share);
+  if (negative) l.mean = std::conj(l.mean);
+  return l;
 }
 
 std::optional<double> TwoToneReading::alone(ProductIndex p) const {
   if (!alone_spectra_) return std::nullopt;
-  return std::abs(alone_spectra_->at(0, bin(p)));
+  return std::abs(alone_spectra_->at(0, bin(p)) / rig_.response.ret(frequency(p)).response);
+}
+
+// The other products of that frequency, as a note; "" for none.
+std::string TwoToneReading::falls_on(ProductIndex p) const {
+  if (bin(p) == 0) return "falls on dc";
+  std::string note;
+  for (const ProductIndex q : products_) {
+    if (q == p || ProductIndex{-q.k1, -q.k2} == p || bin(q) != bin(p)) continue;
+    note += (note.empty() ? "falls on " : " and ") + name_of(q);
+  }
+  return note;
+}
+
+TwoToneReading::Reference TwoToneReading::upper_tone() const {
+  return {tone2_, pair_.share2(), false};
+}
+
+TwoToneReading::Reference TwoToneReading::both_tones() const {
+  const std::array parts{Contribution{tone1_.u, tone1_.dof}, Contribution{tone2_.u, tone2_.dof}};
+  const Contribution c = combine(parts);
+  return {{std::abs(tone1_.mean) + std::abs(tone2_.mean), c.u, c.dof}, 1.0, true};
+}
+
+// The rig's own product for a rig that bends weakly, from the harmonic that it shows at these
+// levels.
+double TwoToneReading::rig_floor(ProductIndex p, const Reference& reference) const {
+  if (p.order() < 2) return 0.0;
+  return rig_.floor.at(send_, return_level_, p.order()).value_or(0.0) *
+         over_harmonic(p, pair_.share1(), pair_.share2()) / reference.share;
 }
 
 IntermodPoint TwoToneReading::blank(const std::string& name) const {
   IntermodPoint p;
   p.method = pair_.method;
-  p.f1_hz = pair_.f1.value();
-  p.f2_hz = pair_.f2.value();
+  p.f1_hz = tones_.f1.value();
+  p.f2_hz = tones_.f2.value();
+  p.ratio = pair_.ratio;
   p.drive = drive_;
   p.unit = rig_.ret.unit;
   p.product = name;
   p.blocks = spectra_.blocks() - first_;
-  p.settled_after_s = first_ * static_cast<double>(hold_.block) / rate_.value();
+  p.settled_after_s = first_ * static_cast<double>(held_.hold.block) / rate_.value();
   return p;
 }
 
-TwoToneReading::Sum TwoToneReading::finish(const std::string& name, const Part& part,
-                                           const Line& carrier, double rig_floor) const {
-  Sum s;
-  s.point = blank(name);
-  if (!part.in_reach) {
-    const std::array flags{take_flag_, Flag::alias};
-    s.point.flag = gravest(flags);
-    s.reading.flag = Flag::alias;
-    return s;
-  }
-  s.reading = relate(part.amplitude, part.u, part.dof, carrier, rig_floor);
+TwoToneReading::Part TwoToneReading::single(ProductIndex p, const Reference& reference) const {
+  Part part;
+  part.in_reach = in_reach(p);
+  part.readable = falls_on(p).empty();
+  if (!part.in_reach || bin(p) == 0) return part;
+  const Line l = product(p);
+  part.amplitude = std::abs(l.mean);
+  part.u = l.u;
+  part.dof = l.dof;
+  part.noise_threshold = noise_threshold(l.u);
+  part.limit = amplitude_upper_limit(part.amplitude, l.u);
+  part.split_u = rig_.response.ret_ratio(frequency(p), tones_.f2).u.value() / kDbPerRelative;
+  part.floor = rig_floor(p, reference);
+  if (p.k1 != 0) part.alone = alone(p);  // harmonics of f2 need no f1
+  return part;
+}
+
+RelativeReading TwoToneReading::relative(const Part& part, const Reference& reference) const {
+  RelativeReading r = relate(part.amplitude, part.u, part.dof, reference.line, part.floor);
+  const double carrier = std::abs(reference.line.mean);
+  if (part.amplitude <= part.noise_threshold) r.flag = Flag::noise;
+  if (r.flag == Flag::noise) r.ratio = part.limit / carrier;
   // What stands there with f2 alone is not the unit's intermodulation: products less than 10 dB
   // above it are flagged. Where the segment shows noise alone, the noise flag has spoken already.
-  constexpr double kTenDecibels = 3.1622776601683795;
-  if (s.reading.flag == Flag::none && part.alone && *part.alone * kTenDecibels > part.amplitude) {
-    s.reading.flag = Flag::floor;
+  if (r.flag == Flag::none && part.alone && *part.alone * kTenDecibels > part.amplitude) {
+    r.flag = Flag::floor;
   }
-  const std::array flags{take_flag_, s.reading.flag};
-  s.point.flag = gravest(flags);
-  if (!(s.reading.ratio > 0.0)) return s;  // exactly nothing, as only arithmetic gives it
-  const double expanded = coverage_factor_95(s.reading.dof) * s.reading.u;
-  s.point.percent = 100.0 * s.reading.ratio;
-  s.point.db = 20.0 * std::log10(s.reading.ratio);
-  s.point.expanded_u_db = kDbPerRelative * expanded / s.reading.ratio;
-  const double floor = std::max(rig_floor, part.alone.value_or(0.0) / std::abs(carrier.mean));
-  if (floor > 0.0) s.point.floor_db = 20.0 * std::log10(floor);
-  return s;
+  const std::array doubts{Contribution{r.u, r.dof},
+                          Contribution{r.ratio * part.split_u, kInfiniteDof}};
+  const Contribution doubt = combine(doubts);
+  r.u = doubt.u;
+  r.dof = doubt.dof;
+  return r;
 }
 
-TwoToneReading::Sum TwoToneReading::sum(const std::string& name, std::array<ProductIndex, 2> pair,
-                                        const Line& carrier, double rig_floor) const {
-  const Line a = product(pair[0]), b = product(pair[1]);
-  const std::array parts{Contribution{a.u, a.dof}, Contribution{b.u, b.dof}};
-  const Contribution c = combine(parts);
-  Part part{std::abs(a.mean) + std::abs(b.mean), c.u, c.dof, std::nullopt,
-            in_reach(pair[0]) && in_reach(pair[1])};
-  const auto alone_a = alone(pair[0]), alone_b = alone(pair[1]);
-  if (alone_a && alone_b) part.alone = *alone_a + *alone_b;
-  return finish(name, part, carrier, rig_floor);
-}
-
-TwoToneReading::Sum TwoToneReading::single(const std::string& name, ProductIndex p,
-                                           const Line& carrier, double rig_floor) const {
-  const Line a = product(p);
-  return finish(name, {std::abs(a.mean), a.u, a.dof, alone(p), in_reach(p)}, carrier, rig_floor);
-}
-
-IntermodPoint TwoToneReading::total(const Sum& a, const Sum& b) const {
-  IntermodPoint p = blank("total");
-  std::vector<RelativeReading> seen, limits;
-  for (const Sum* s : {&a, &b}) {
-    if (s->reading.flag == Flag::alias) continue;
-    (s->reading.flag == Flag::noise ? limits : seen).push_back(s->reading);
+TwoToneReading::Row TwoToneReading::finish(const std::string& name, const Part& part,
+                                           const Reference& reference) const {
+  Row row;
+  row.point = blank(name);
+  row.point.flag = take_flag_;
+  row.readable = part.readable;
+  if (!part.in_reach) {
+    const std::array flags{take_flag_, Flag::alias};
+    row.point.flag = gravest(flags);
+    row.reading.flag = Flag::alias;
+    return row;
   }
-  const std::vector<RelativeReading>& used = seen.empty() ? limits : seen;
-  if (used.empty()) {
-    p.flag = a.point.flag;
-    return p;
-  }
-  double squares = 0.0;
-  for (const auto& r : used) squares += r.ratio * r.ratio;
-  const double root = std::sqrt(squares);
-  if (root == 0.0) {
-    p.flag = a.point.flag;
-    return p;
-  }
-  std::vector<Contribution> terms;
-  for (const auto& r : used) terms.push_back({r.ratio * r.u / root, r.dof});
-  if (!seen.empty()) {
-    // A part that is only an upper limit widens the uncertainty: rectangular between absent and
-    // full.
-    for (const auto& r : limits) {
-      terms.push_back({(std::hypot(root, r.ratio) - root) / (2.0 * std::sqrt(3.0)), kInfiniteDof});
+  if (!part.readable) return row;
+  Part bounded = part;
+  if (pair_.as_named) {
+    if (const auto measured = rig_.floor.at_product(send_, return_level_, pair_.method, name)) {
+      bounded.floor = *measured;
     }
   }
+  row.reading = relative(bounded, reference);
+  const std::array flags{take_flag_, row.reading.flag};
+  row.point.flag = gravest(flags);
+  if (!(row.reading.ratio > 0.0)) return row;  // exactly nothing, as only arithmetic gives it
+  const double expanded = coverage_factor_95(row.reading.dof) * row.reading.u;
+  row.point.percent = 100.0 * row.reading.ratio;
+  row.point.db = 20.0 * std::log10(row.reading.ratio);
+  row.point.expanded_u_db = kDbPerRelative * expanded / row.reading.ratio;
+  const double floor =
+      std::max(bounded.floor, part.alone.value_or(0.0) / std::abs(reference.line.mean));
+  if (floor > 0.0) row.point.floor_db = 20.0 * std::log10(floor);
+  return row;
+}
+
+TwoToneReading::Row TwoToneReading::arithmetic_sum(const std::string& name,
+                                                   std::span<const ProductIndex> products,
+                                                   const Reference& reference) const {
+  if (products.size() == 1) return finish(name, single(products[0], reference), reference);
+  Part all;
+  std::vector<Contribution> terms;
+  for (const ProductIndex p : products) {
+    const Part part = single(p, reference);
+    all.in_reach &= part.in_reach;
+    all.readable &= part.readable;
+    all.amplitude += part.amplitude;
+    all.limit += part.limit;
+    all.floor += part.floor;
+    all.split_u += part.amplitude * part.split_u;
+    if (part.alone) all.alone = all.alone.value_or(0.0) + *part.alone;
+    terms.push_back({part.u, part.dof});
+  }
   const Contribution c = combine(terms);
-  p.percent = 100.0 * root;
-  p.db = 20.0 * std::log10(root);
-  p.expanded_u_db = kDbPerRelative * coverage_factor_95(c.dof) * c.u / root;
+  all.u = c.u;
+  all.dof = c.dof;
+  if (all.amplitude > 0.0) all.split_u /= all.amplitude;
+  all.noise_threshold = kNoiseSum95 * c.u;
+  return finish(name, all, reference);
+}
+
+TwoToneReading::Row TwoToneReading::root_sum(const std::string& name,
+                                             std::span<const ProductIndex> products,
+                                             const Reference& reference) const {
+  Part all;
+  std::vector<Part> parts;
+  for (const ProductIndex p : products) {
+    const Part& part = parts.emplace_back(single(p, reference));
+    all.in_reach &= part.in_reach;
+    all.readable &= part.readable;
+    all.amplitude = std::hypot(all.amplitude, part.amplitude);
+    all.limit = std::hypot(all.limit, part.limit);
+    all.floor = std::hypot(all.floor, part.floor);
+    if (part.alone) all.alone = std::hypot(all.alone.value_or(0.0), *part.alone);
+  }
+  std::vector<Contribution> terms;
+  double all_u = 0.0;
+  for (const Part& part : parts) {
+    // d r / d a = a / r (JCGM 100:2008 eq. 10).
+    const double weight = all.amplitude > 0.0 ? part.amplitude / all.amplitude : 1.0;
+    terms.push_back({weight * part.u, part.dof});
+    all.split_u += weight * weight * part.split_u;
+    all_u = std::hypot(all_u, part.u);
+  }
+  const Contribution c = combine(terms);
+  all.u = c.u;
+  all.dof = c.dof;
+  all.noise_threshold = kNoiseRootSum95 * all_u;
+  return finish(name, all, reference);
+}
+
+IntermodPoint TwoToneReading::total(const std::string& name, const Row& a, const Row& b) const {
+  IntermodPoint p = blank(name);
+  p.flag = take_flag_;
+  if (!a.readable || !b.readable) return p;
+  std::vector<RelativeReading> parts;
+  for (const Row* row : {&a, &b}) {
+    if (row->reading.flag != Flag::alias) parts.push_back(row->reading);
+  }
+  // A missing part (beyond the sample rate) makes the total incomplete: it carries that flag.
+  const RelativeReading r = root_sum_of(parts);
+  const std::array flags{take_flag_, parts.size() < 2 ? Flag::alias : Flag::none, r.flag};
+  p.flag = gravest(flags);
+  if (!(r.ratio > 0.0)) return p;
+  p.percent = 100.0 * r.ratio;
+  p.db = 20.0 * std::log10(r.ratio);
+  p.expanded_u_db = kDbPerRelative * coverage_factor_95(r.dof) * r.u / r.ratio;
   if (a.point.floor_db && b.point.floor_db) {
     p.floor_db = 10.0 * std::log10(std::pow(10.0, *a.point.floor_db / 10.0) +
                                    std::pow(10.0, *b.point.floor_db / 10.0));
   }
-  // A missing part (beyond the sample rate) makes the total incomplete: it carries that flag.
-  const bool incomplete = a.reading.flag == Flag::alias || b.reading.flag == Flag::alias;
-  const bool all_floor =
-      std::all_of(used.begin(), used.end(), [](const auto& r) { return r.flag == Flag::floor; });
-  const std::array flags{take_flag_, incomplete ? Flag::alias : Flag::none,
-                         seen.empty() ? Flag::noise : Flag::none,
-                         all_floor ? Flag::floor : Flag::none};
-  p.flag = gravest(flags);
   return p;
+}
+
+// A tone over a reference that holds it: with r = a / (a + b), u(r) / (r (1 - r)) is the root sum
+// of both relative uncertainties.
+RelativeReading TwoToneReading::relative_tone(ProductIndex p, const Reference& reference) const {
+  const Line& own = p.k1 != 0 ? tone1_ : tone2_;
+  const double r = std::abs(own.mean) / std::abs(reference.line.mean);
+  if (!reference.both) {
+    if (p.k1 != 0) return relate(std::abs(own.mean), own.u, own.dof, reference.line, 0.0);
+    return {1.0, 0.0, kInfiniteDof, Flag::none};
+  }
+  const auto weighted = [&](const Line& l) {
+    return Contribution{r * (1.0 - r) * l.u / std::abs(l.mean), l.dof};
+  };
+  const std::array parts{weighted(tone1_), weighted(tone2_)};
+  const Contribution c = combine(parts);
+  return {r, c.u, c.dof, Flag::none};
+}
+
+ProductPoint TwoToneReading::listed(ProductIndex p, const Reference& reference) const {
+  ProductPoint point;
+  point.method = pair_.method;
+  point.f1_hz = tones_.f1.value();
+  point.f2_hz = tones_.f2.value();
+  point.drive = drive_;
+  point.unit = rig_.ret.unit;
+  point.k1 = p.k1;
+  point.k2 = p.k2;
+  point.order = p.order();
+  point.frequency_hz = frequency(p).value();
+  point.flag = take_flag_;
+  if (!in_reach(p)) {
+    const std::array flags{take_flag_, Flag::alias};
+    point.flag = gravest(flags);
+    point.note = "past the highest frequency shown";
+    return point;
+  }
+  if (const std::string note = falls_on(p); !note.empty()) point.note = note;
+  if (bin(p) == 0) return point;
+  const bool is_tone = p.order() == 1;
+  const RelativeReading r =
+      is_tone ? relative_tone(p, reference) : relative(single(p, reference), reference);
+  const std::array flags{take_flag_, r.flag};
+  point.flag = gravest(flags);
+  if (!(r.ratio > 0.0)) return point;
+  point.level = rig_.ret.level_of_peak(r.ratio * std::abs(reference.line.mean));
+  point.relative_db = 20.0 * std::log10(r.ratio);
+  if (r.flag != Flag::noise) {
+    point.phase_deg = is_tone ? 0.0 : kDegrees * std::arg(product(p).mean);
+  }
+  const bool is_reference = is_tone && !reference.both && p.k2 != 0;
+  if (!is_reference) {
+    point.expanded_u_db = kDbPerRelative * coverage_factor_95(r.dof) * r.u / r.ratio;
+  }
+  return point;
+}
+
+void TwoToneReading::list_products(const Reference& reference,
+                                   std::vector<ProductPoint>& out) const {
+  for (const ProductIndex p : products_) out.push_back(listed(p, reference));
 }
 
 }  // namespace kneeprint

@@ -41,19 +41,12 @@ FitDatum datum_of(const HarmonicPoint& p, double input, double fundamental) {
   return d;
 }
 
-// The options of the step that played these tones.
-StepOptions options_of(const Plan& plan, const IntermodPoint& p) {
-  for (const StepPlan& step : plan.steps) {
-    if (step.method == p.method &&
-        step.options.tones == std::vector{Hertz(p.f1_hz), Hertz(p.f2_hz)}) {
-      return step.options;
-    }
-  }
-  return {};
+bool same_take(const IntermodPoint& a, const IntermodPoint& b) {
+  return a.method == b.method && a.drive == b.drive && a.f1_hz == b.f1_hz && a.f2_hz == b.f2_hz &&
+         a.ratio == b.ratio;
 }
 
-HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const Plan& plan,
-                       const RigView& view) {
+HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const RigView& view) {
   HoldoutFamily result;
   result.family = fitted.family->id;
   const SigmoidParameters at = fitted.point();
@@ -66,12 +59,14 @@ HoldoutFamily hold_out(const FittedFamily& fitted, const Curves& curves, const P
   const IntermodPoint* take = nullptr;  // whose products are predicted
   std::vector<PredictedProduct> predicted;
   for (const IntermodPoint& p : curves.intermods) {
-    const Method& method = *find_method(p.method);
-    if (method.predict == nullptr) continue;
-    if (take == nullptr || p.method != take->method || p.drive != take->drive ||
-        p.f1_hz != take->f1_hz || p.f2_hz != take->f2_hz) {
+    const Method* method = find_method(p.method);
+    if (method == nullptr || method->predict == nullptr) continue;
+    if (take == nullptr || !same_take(p, *take)) {
       take = &p;
-      predicted = method.predict(products, options_of(plan, p), input_peak(view, p.drive));
+      StepOptions played;
+      played.tones = {Hertz(p.f1_hz), Hertz(p.f2_hz)};
+      played.ratio = p.ratio;
+      predicted = method->predict(products, played, input_peak(view, p.drive));
     }
     const auto it = std::find_if(predicted.begin(), predicted.end(),
                                  [&](const PredictedProduct& q) { return q.product == p.product; });
@@ -124,7 +119,7 @@ Model describe(const Curves& curves, const Plan& plan, const Rig& rig) {
   model.frequency_dependent = dependent.value_or(false);
   if (!curves.intermods.empty()) {
     for (const FittedFamily& f : model.fit.families) {
-      model.holdout.push_back(hold_out(f, curves, plan, view));
+      model.holdout.push_back(hold_out(f, curves, view));
     }
   }
   return model;

@@ -7,6 +7,7 @@
 #include <cmath>
 #include <vector>
 
+#include "method/reading.h"
 #include "quantity/failure.h"
 
 namespace kneeprint {
@@ -215,13 +216,12 @@ double fit_frequency(const Plan& plan) {
 }
 
 void check_rate(const Plan& plan, Hertz rate) {
-  constexpr double kHighestTone = 0.4535;  // what a converter's half-band filter passes
-  const double top = kHighestTone * rate.value();
+  constexpr double kRounding = 1.0 + 1e-9;
+  const double top = kConverterShare * rate.value();
   for (const StepPlan& step : plan.steps) {
-    std::vector<Hertz> tones = step.frequencies;
-    tones.insert(tones.end(), step.options.tones.begin(), step.options.tones.end());
-    for (const Hertz f : tones) {
-      if (f.value() > top) {
+    if (const auto check = find_method(step.method)->check) check(step.options, rate);
+    for (const Hertz f : step.frequencies) {
+      if (f.value() > top * kRounding) {
         throw InputError(fmt::format(
             "plan: {} Hz cannot be played at a sample rate of {} Hz (at most {:.0f} Hz): lower the "
             "frequency or raise the rate",

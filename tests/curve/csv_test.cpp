@@ -47,7 +47,7 @@ Curves any_curves(int rows) {
                            any.cell(), any(), any(), any(), i % 2 == 0 ? kInfiniteDof : any()});
     c.intermods.push_back({"smpte", any(), any(), any(), any.unit(), i % 2 == 0 ? "m2" : "total",
                            any.cell(), any.cell(), any.cell(), any.cell(), any.flag(), any.cell(),
-                           any.cell()});
+                           any.cell(), any.whole(), any(), any()});
     c.responses.push_back(
         {any(), any(), any.unit(), any.whole(), any.cell(), any.cell(), any.cell(), any.flag()});
     c.products.push_back({"smpte", any(), any(), any(), any.unit(), any.whole(), any.whole(),
@@ -108,7 +108,7 @@ TEST_CASE("headers: the columns that scripts rely on, then the further ones") {
         "direction\n");
   CHECK(intermod_csv(none) ==
         "method,f1_hz,f2_hz,drive,level_unit,product,percent,db,expanded_u_db,floor_db,flag,"
-        "am_percent,pm_percent,blocks,settled_after_s\n");
+        "am_percent,pm_percent,blocks,settled_after_s,ratio\n");
   CHECK(response_csv(none) == std::string(kResponseHeader) + "\n");
   const auto text = [&](std::string_view file) {
     const auto tables = csv_tables();
@@ -183,7 +183,7 @@ TEST_CASE("every double, cell, flag and unit comes back, and the bytes with them
                  p.percent != q.percent || p.db != q.db || p.expanded_u_db != q.expanded_u_db ||
                  p.floor_db != q.floor_db || p.flag != q.flag || p.am_percent != q.am_percent ||
                  p.pm_percent != q.pm_percent || p.blocks != q.blocks ||
-                 p.settled_after_s != q.settled_after_s;
+                 p.settled_after_s != q.settled_after_s || p.ratio != q.ratio;
     const ResponsePoint &r = c.responses[i], &s = back.responses[i];
     different += r.frequency_hz != s.frequency_hz || r.drive != s.drive || r.unit != s.unit ||
                  r.order != s.order || r.magnitude_db != s.magnitude_db ||
@@ -271,7 +271,7 @@ TEST_CASE("infinite degrees of freedom are read, other infinities are not") {
 
 TEST_CASE("an intermodulation row names its method and product") {
   const CurvesFolder folder{Curves{}};
-  CHECK(folder.refusal("intermod.csv", intermod_csv({}) + ",60,7000,0,dBu,m2,,,,,,,,4,0\n") ==
+  CHECK(folder.refusal("intermod.csv", intermod_csv({}) + ",60,7000,0,dBu,m2,,,,,,,,4,0,4\n") ==
         "row 2, column 1 \"method\": found \"\"; expected a name");
 }
 

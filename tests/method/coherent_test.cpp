@@ -5,6 +5,8 @@
 
 #include <array>
 #include <cmath>
+#include <numeric>
+#include <utility>
 
 using namespace kneeprint;
 
@@ -42,4 +44,31 @@ TEST_CASE("two-tone blocks hold whole cycles of both tones") {
   const std::array ccif{Hertz(19000.0), Hertz(20000.0)};
   CHECK(common_block(smpte, Hertz(48000.0), Seconds(0.5)) == 24000);
   CHECK(common_block(ccif, Hertz(44100.0), Seconds(0.25)) == 13230);
+}
+
+TEST_CASE("pairs: whole cycles of both, every second bin free, at most 0.1 % off") {
+  for (const double rate : {44100.0, 48000.0, 96000.0}) {
+    for (const auto& [a, b] : {std::pair(60.0, 7000.0),
+                               {4130.0, 7013.0},
+                               {41.3, 7013.7},
+                               {33.333, 12345.678},
+                               {8000.0, 11950.0},
+                               {10000.25, 10080.5}}) {
+      CAPTURE(rate);
+      CAPTURE(a);
+      const CoherentPair p = coherent_pair(Hertz(a), Hertz(b), Hertz(rate), Seconds(0.5));
+      const double bin = rate / static_cast<double>(p.block);
+      CHECK(p.f1.value() == doctest::Approx(static_cast<double>(p.cycles1) * bin).epsilon(1e-12));
+      CHECK(p.f2.value() == doctest::Approx(static_cast<double>(p.cycles2) * bin).epsilon(1e-12));
+      CHECK(std::gcd(p.cycles1, p.cycles2) >= 2);
+      CHECK(static_cast<double>(p.block) >= 0.5 * rate);
+      CHECK(std::abs(p.f1.value() / a - 1.0) <= 0.001);
+      CHECK(std::abs(p.f2.value() / b - 1.0) <= 0.001);
+      CHECK(std::abs((p.f2 - p.f1).value() / (b - a) - 1.0) <= 0.001);
+      if (a == std::floor(a) && b == std::floor(b)) {
+        CHECK(p.f1 == Hertz(a));
+        CHECK(p.f2 == Hertz(b));
+      }
+    }
+  }
 }

@@ -19,6 +19,9 @@ inline TakeSpec spec_for(const std::string& method, double asked_hz, double send
   spec.method = method;
   spec.asked = Hertz(asked_hz);
   spec.send = LevelDbfs(send_dbfs);
+  if (find_method(method)->needs.tones_required) {
+    spec.options.tones = {Hertz(300.0), Hertz(6500.0)};
+  }
   spec.hold_blocks = find_method(method)->first_hold_blocks(spec, rate);
   return spec;
 }
