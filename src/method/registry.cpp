@@ -5,16 +5,16 @@
 #include "method/method.h"
 #include "method/modulation.h"
 #include "method/multitone.h"
+#include "method/reference_tone.h"
+#include "method/silence.h"
 #include "method/steady.h"
 
 namespace kneeprint {
 
 std::span<const Method> methods() {
   static const std::array table{
-      steady_sine(),
-      smpte_modulation(),
-      ccif_difference(),
-      multitone(),
+      steady_sine(), smpte_modulation(), ccif_difference(),
+      multitone(),   silence(),          reference_tone(),
   };
   return table;
 }
