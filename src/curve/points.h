@@ -41,6 +41,10 @@ struct HarmonicPoint {
   double component_u = 0.0;  ///< standard uncertainty of each component: noise and rig floor
   double dof = kInfiniteDof;
   std::string direction = "up";  ///< of the ladder when it was taken: up, down
+  // Of level, from noise alone (type A): for comparisons in which all else is common. Not in the
+  // table.
+  double noise_u_db = 0.0;  ///< standard uncertainty; 0: unknown
+  double noise_dof = kInfiniteDof;
 };
 
 struct LevelPoint {

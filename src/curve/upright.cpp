@@ -10,6 +10,9 @@ bool usable(const LevelPoint& p) {
   return p.output && p.flag != Flag::clipped && p.flag != Flag::unsteady;
 }
 
+// Output levels such as noise and hum; ratios and times are what they are.
+bool is_level(const ScalarPoint& p) { return p.value_unit == name(p.unit); }
+
 }  // namespace
 
 int stated_polarity(const Curves& curves, double asked_hz) {
@@ -48,7 +51,8 @@ void make_upright(Curves& curves, int polarity) {
 void make_relative(Curves& curves, double asked_hz) {
   const LevelPoint* lowest = nullptr;
   for (const LevelPoint& p : curves.levels) {
-    if (p.asked_hz == asked_hz && usable(p) && (lowest == nullptr || p.drive < lowest->drive)) {
+    if (p.asked_hz != asked_hz || !usable(p) || p.direction == "down") continue;
+    if (lowest == nullptr || p.drive < lowest->drive) {
       lowest = &p;
     }
   }
@@ -56,6 +60,9 @@ void make_relative(Curves& curves, double asked_hz) {
     for (LevelPoint& p : curves.levels) p.output = p.noise = std::nullopt;
     for (HarmonicPoint& p : curves.harmonics) p.level = std::nullopt;
     for (ProductPoint& p : curves.products) p.level = std::nullopt;
+    for (ScalarPoint& p : curves.scalars) {
+      if (is_level(p)) p.value = p.floor = std::nullopt;
+    }
     return;
   }
   const double reference = lowest->output.value();
@@ -77,6 +84,11 @@ void make_relative(Curves& curves, double asked_hz) {
     p.component_u *= scale;
   }
   for (ProductPoint& p : curves.products) shift(p.level);
+  for (ScalarPoint& p : curves.scalars) {
+    if (!is_level(p)) continue;
+    shift(p.value);
+    shift(p.floor);
+  }
 }
 
 std::optional<bool> depends_on_frequency(const Curves& curves) {

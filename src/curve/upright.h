@@ -17,9 +17,9 @@ int stated_polarity(const Curves& curves, double asked_hz);
 /// DC by its sign. +1 and 0 leave all as it is.
 void make_upright(Curves& curves, int polarity);
 
-/// A reel without declared levels: outputs become dB above the fundamental of the lowest usable
-/// rung at `asked_hz`, phasors are scaled so that its gain is 1. Nothing usable there: all outputs
-/// are emptied.
+/// A reel without declared levels: outputs (and scalars in a level unit) become dB above the
+/// fundamental of the lowest usable rung at `asked_hz`, phasors are scaled so that its gain is 1.
+/// Nothing usable there: all outputs are emptied.
 void make_relative(Curves& curves, double asked_hz);
 
 /// Do H2 and H3 at the same rung differ between the plan's frequencies by more than 0.5 dB and more

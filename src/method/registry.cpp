@@ -5,6 +5,8 @@
 #include "method/method.h"
 #include "method/modulation.h"
 #include "method/multitone.h"
+#include "method/reference_tone.h"
+#include "method/silence.h"
 #include "method/steady.h"
 #include "method/swept.h"
 
@@ -21,6 +23,8 @@ std::span<const Method> methods() {
       ccif_difference(),
       total_difference(),
       multitone(),
+      silence(),
+      reference_tone(),
   };
   // clang-format on
   return table;

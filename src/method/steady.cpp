@@ -245,6 +245,7 @@ HarmonicPoint SteadyReading::blank(int order) const {
   p.drive = drive_;
   p.unit = rig_.ret.unit;
   p.order = order;
+  p.direction = spec_.down ? "down" : "up";
   return p;
 }
 
@@ -259,6 +260,8 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
   const double level_u =
       std::hypot(coverage_factor_95(r.dof) * return_u_db_, kDbPerRelative * expanded / r.ratio);
   p.level_u_db = level_u;
+  if (std::abs(line.mean) > 0.0) p.noise_u_db = kDbPerRelative * line.u / std::abs(line.mean);
+  p.noise_dof = line.dof;
   p.in_phase = line.mean.real() * rig_.ret.peak_per_full_scale;
   p.quadrature = line.mean.imag() * rig_.ret.peak_per_full_scale;
   p.component_u = r.u * peak * rig_.ret.peak_per_full_scale;
@@ -320,7 +323,7 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       }
     }
     out.harmonics.push_back(point);
-    out.responses.push_back(response);
+    if (!spec_.down) out.responses.push_back(response);  // the table has no direction
   }
   if (summed.empty()) return;
   const Distortion thd = total(summed);
@@ -415,6 +418,7 @@ TakeVerdict SteadyReading::read(Curves& out) {
   level.asked_hz = spec_.asked.value();
   level.drive = drive_;
   level.unit = rig_.ret.unit;
+  level.direction = spec_.down ? "down" : "up";
   level.blocks = spectra_.blocks() - first_;
   level.settled_after_s = first_ * block.value();
   if (std::abs(spectra_.at(first_, tone_.cycles)) <= 0.0) {

@@ -4,6 +4,7 @@
 #include <fmt/format.h>
 
 #include "curve/csv.h"
+#include "curve/hysteresis.h"
 #include "print/folder.h"
 #include "quantity/failure.h"
 #include "report/report.h"
@@ -45,7 +46,7 @@ int analyse_folder(const std::filesystem::path& path) {
 
 Model fit_folder(const std::filesystem::path& path) {
   const Opened o = open(path);
-  const Model model = describe(read_curves(o.folder.curves()), o.plan, o.rig);
+  const Model model = describe(ascending(read_curves(o.folder.curves())), o.plan, o.rig);
   o.folder.write_result(o.folder.model_file(), model_json(model));
   return model;
 }
@@ -55,7 +56,7 @@ void report_folder(const std::filesystem::path& path, const std::string& why_no_
   ReportData data{o.plan,
                   o.rig,
                   o.journal,
-                  read_curves(o.folder.curves()),
+                  ascending(read_curves(o.folder.curves())),
                   std::nullopt,
                   why_no_model.empty() ? "no fit was made (run `kneeprint fit`)" : why_no_model,
                   {}};

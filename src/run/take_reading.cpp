@@ -5,6 +5,8 @@
 
 #include <cmath>
 
+#include "curve/hysteresis.h"
+#include "curve/stability.h"
 #include "curve/upright.h"
 #include "quantity/failure.h"
 
@@ -55,6 +57,8 @@ Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan&
   }
   make_upright(curves, polarity_of(curves, plan));
   if (!view_of(rig).gain_known) make_relative(curves, fit_frequency(plan));
+  add_hysteresis(curves);
+  add_drift(curves);
   return curves;
 }
 

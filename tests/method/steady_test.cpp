@@ -299,3 +299,34 @@ TEST_CASE("the rig's own response is taken out, and an unknown split is a stated
     CHECK(*p.phase_deg == doctest::Approx(0.0).scale(1.0).epsilon(1e-7));
   }
 }
+
+TEST_CASE("a take on the way down says so, and leaves the response table to the way up") {
+  TakeSpec spec = spec_for("steady", 997.0, -20.0);
+  const Waveform take = response(
+      spec, [](double x) { return x + 0.1 * x * x; }, 1e-6, 1);
+  const Curves up = read(spec, take);
+  spec.down = true;
+  const Curves down = read(spec, take);
+  CHECK(up.levels.at(0).direction == "up");
+  CHECK(down.levels.at(0).direction == "down");
+  for (const auto& h : down.harmonics) CHECK(h.direction == "down");
+  CHECK(down.harmonics.size() == up.harmonics.size());
+  CHECK(!up.responses.empty());
+  CHECK(down.responses.empty());
+}
+
+TEST_CASE("the noise of a level stands apart from calibration and floor") {
+  const TakeSpec spec = spec_for("steady", 997.0, -20.0);
+  const Waveform take = response(
+      spec, [](double x) { return x + 0.1 * x * x; }, 1e-6, 1);
+  RigView rig;
+  rig.ret = rig.send = LevelScale::calibrated(VoltsRms(1.0), Decibels(0.3));
+  const Curves bare = read(spec, take), doubted = read(spec, take, rig);
+  for (const int n : {1, 2}) {
+    const HarmonicPoint &a = bare.harmonics.at(static_cast<std::size_t>(n - 1)),
+                        &b = doubted.harmonics.at(static_cast<std::size_t>(n - 1));
+    CHECK(a.noise_u_db > 0.0);
+    CHECK(a.noise_u_db == b.noise_u_db);
+    CHECK(*b.level_u_db > 0.5);
+  }
+}
