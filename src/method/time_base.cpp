@@ -2,6 +2,7 @@
 #include "method/time_base.h"
 
 #include <algorithm>
+#include <array>
 #include <boost/math/distributions/fisher_f.hpp>
 #include <cmath>
 #include <complex>
@@ -9,7 +10,6 @@
 #include <numeric>
 #include <vector>
 
-#include "method/block_spectra.h"
 #include "method/reading.h"
 #include "signal/fft.h"
 #include "signal/resample.h"
@@ -265,13 +265,16 @@ class Follower {
     return out;
   }
 
-  // The largest deviation of the speed, of its cosine series (no jump at the ends) the terms
-  // between the two frequencies.
+  // The largest deviation of the speed: of its cosine series (which sees no jump from one end to
+  // the other) the terms in the band, fading out over an octave below and half of one above. What
+  // the missing rest of the series leaves at the very ends is left out.
   double flutter(const UniformSpline& e) const {
     constexpr Hertz kGrid{200.0};
+    constexpr Seconds kEnds{0.1};
     const double length_s = seconds(e.to() - e.from());
-    const auto count =
-        static_cast<std::size_t>(std::max(2.0, std::round(cycles(kGrid, Seconds(length_s)))));
+    const auto count = static_cast<std::size_t>(cycles(kGrid, Seconds(length_s)));
+    const auto ends = static_cast<std::size_t>(cycles(kGrid, kEnds));
+    if (count < 4 * ends) return 0.0;
     std::vector<double> speed(count), deviation(count, 0.0);
     for (std::size_t i = 0; i < count; ++i) {
       speed[i] = e.slope(e.from() + (static_cast<double>(i) + 0.5) / static_cast<double>(count) *
@@ -279,19 +282,21 @@ class Follower {
     }
     for (std::size_t k = 1; k < count; ++k) {
       const double f = static_cast<double>(k) / (2.0 * length_s);
-      if (f < kSlowestFlutter.value()) continue;
-      if (f > kFastestFlutter.value()) break;
+      const double share = std::min(2.0 * f / kSlowestFlutter.value() - 1.0,
+                                    3.0 - 2.0 * f / kFastestFlutter.value());
+      if (share <= 0.0) continue;
       const auto term = [&](std::size_t i) {
         return std::cos(std::numbers::pi * static_cast<double>(k) * (static_cast<double>(i) + 0.5) /
                         static_cast<double>(count));
       };
       double weight = 0.0;
       for (std::size_t i = 0; i < count; ++i) weight += speed[i] * term(i);
-      weight *= 2.0 / static_cast<double>(count);
+      weight *= 2.0 / static_cast<double>(count) * std::min(1.0, share);
       for (std::size_t i = 0; i < count; ++i) deviation[i] += weight * term(i);
     }
-    const auto [least, most] = std::ranges::minmax(deviation);
-    return std::max(-least, most);
+    double peak = 0.0;
+    for (std::size_t i = ends; i + ends < count; ++i) peak = std::max(peak, std::abs(deviation[i]));
+    return peak;
   }
 
   const Waveform& response_;
@@ -309,6 +314,15 @@ class Follower {
 double RecorderTime::loss(Hertz f) const {
   const double x = kTurn * cycles(f, jitter);
   return -std::expm1(-0.5 * x * x);
+}
+
+Line RecorderTime::with_loss(const Line& line, Hertz f) const {
+  const double lost = loss(f);
+  if (lost == 0.0) return line;
+  const std::array parts{Contribution{line.u, line.dof},
+                         Contribution{std::abs(line.mean) * lost, kInfiniteDof}};
+  const Contribution both = combine(parts);
+  return {line.mean, both.u, both.dof};
 }
 
 SteadiedTake steady_time(const Waveform& response, const HoldLayout& hold,

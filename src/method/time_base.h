@@ -14,7 +14,7 @@
 #include <optional>
 #include <span>
 
-#include "method/method.h"
+#include "method/block_spectra.h"
 
 namespace kneeprint {
 
@@ -31,6 +31,8 @@ struct RecorderTime {
   /// exp(j x) for Gaussian x; the carrier of a phase-modulated tone). Not corrected: a standard
   /// uncertainty of this size is stated instead.
   double loss(Hertz f) const;
+  /// The line at `f` with that term in its uncertainty.
+  Line with_loss(const Line& line, Hertz f) const;
 };
 
 /// A take whose recorder's time was followed.

@@ -55,8 +55,13 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
       tail_(held(pair, spec, rate_).tail),
       cycles1_(cycles_in(pair.f1, hold_.block, rate_)),
       cycles2_(cycles_in(pair.f2, hold_.block, rate_)),
-      spectra_(take.response, hold_, std::gcd(cycles1_, cycles2_)) {
-  if (tail_.blocks > 0) alone_spectra_.emplace(take.response, tail_, std::gcd(cycles1_, cycles2_));
+      steadied_(in_stimulus_time(take.response, hold_, std::array{cycles1_, cycles2_}, rig)),
+      spectra_(steadied_.or_else(take.response), hold_, std::gcd(cycles1_, cycles2_),
+               steadied_.emptied) {
+  if (tail_.blocks > 0) {
+    const SteadiedTake alone = in_stimulus_time(take.response, tail_, std::array{cycles2_}, rig);
+    alone_spectra_.emplace(alone.or_else(take.response), tail_, std::gcd(cycles1_, cycles2_));
+  }
   std::vector<std::size_t> watched;
   for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
     if (in_reach(p)) watched.push_back(bin(p));
@@ -117,7 +122,8 @@ double TwoToneReading::turn(ProductIndex p, int block) const {
 }
 
 Line TwoToneReading::product(ProductIndex p) const {
-  return spectra_.mean(bin(p), first_, [&](int b) { return turn(p, b); });
+  return steadied_.time.with_loss(spectra_.mean(bin(p), first_, [&](int b) { return turn(p, b); }),
+                                  frequency(p));
 }
 
 std::optional<double> TwoToneReading::alone(ProductIndex p) const {

@@ -11,6 +11,7 @@
 
 #include "method/method.h"
 #include "method/reading.h"
+#include "method/time_base.h"
 
 namespace kneeprint {
 
@@ -79,6 +80,7 @@ class TwoToneReading {
   Hertz rate_;
   HoldLayout hold_, tail_;
   std::size_t cycles1_, cycles2_;
+  SteadiedTake steadied_;
   BlockSpectra spectra_;
   std::optional<BlockSpectra> alone_spectra_;
   int first_ = 0;
