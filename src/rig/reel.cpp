@@ -16,7 +16,10 @@ namespace kneeprint {
 namespace {
 
 constexpr Seconds kSilence{0.5}, kGap{0.3};
-constexpr double kLargestOffset = 1000e-6;
+// Speeds are accepted up to 1 %, and a little more for what flutter moves the markers by.
+constexpr double kLargestOffset = 0.0102, kSearched = 0.0125;
+// Markers are placed to this; less is no drift, and no delay by a fraction of a sample.
+constexpr double kNoDrift = 0.02;
 
 // The markers of one reel in one recording.
 class Search {
@@ -39,12 +42,13 @@ class Search {
     }
     find_start();
     ReelFound found;
-    place(found, nominal_);
+    place(found, nominal_ / first_.speed);
     found.code = code(found);
     if (expected_code) check_code(found, *expected_code, file_);
     find_end();
     refine();
     place(found, (last_.start - first_.start) / apart_);
+    settle(found);
     found.clock_ppm = 1e6 * (found.step / nominal_ - 1.0);
     found.polarity = first_.gain < 0.0 ? -1 : 1;
     found.match = std::min(first_.match, last_.match);
@@ -69,9 +73,10 @@ class Search {
   long size() const { return static_cast<long>(recording_.samples.size()); }
   double seconds(double samples) const { return samples / recording_.rate.value(); }
 
-  MarkerFound find(const Marker& marker, double step, double from, double to) const {
+  MarkerFound find(const Marker& marker, double step, double from, double to,
+                   double speeds = kSearched) const {
     return find_marker(marker, recording_.samples, step * layout_.rate, std::lround(from),
-                       std::lround(to));
+                       std::lround(to), speeds);
   }
 
   void place(ReelFound& found, double step) const {
@@ -79,12 +84,22 @@ class Search {
     found.start = first_.start - step * static_cast<double>(layout_.start_marker);
   }
 
+  // A recording in the reel's own time is read as it is: what never drifted is not read between its
+  // samples.
+  void settle(ReelFound& found) const {
+    if (std::abs(found.step - 1.0) * apart_ > kNoDrift) return;
+    place(found, 1.0);
+    if (std::abs(found.start - std::round(found.start)) < kNoDrift) {
+      found.start = std::round(found.start);
+    }
+  }
+
   void find_start() {
     first_ = find(rising_, nominal_, 0.0, static_cast<double>(size()));
     if (!first_.clear()) {
       refuse(fmt::format(
           "no start marker found (best likeness {:.2f}). Is this the recording of a reel, from "
-          "before its first chirp on, and the right channel (--channel)?",
+          "before its first chirp on, at its speed to 1 %, and the right channel (--channel)?",
           first_.match));
     }
   }
@@ -106,7 +121,7 @@ class Search {
   void find_end() {
     const double expected = first_.start + nominal_ * apart_;
     // A falling sweep at a wrong speed is found up to a millisecond off.
-    const double room = nominal_ * apart_ * kLargestOffset + 0.001 * recording_.rate.value();
+    const double room = nominal_ * apart_ * kSearched + 0.001 * recording_.rate.value();
     last_ = find(falling_, nominal_, expected - room, expected + room + 1.0);
     if (last_.clear()) return;
     last_ = find(falling_, nominal_, first_.start, static_cast<double>(size()));
@@ -127,14 +142,18 @@ class Search {
 
   // A marker that runs at another speed is found late or early, as a sweep trades time for
   // frequency. Seen again at the speed just found, that error shrinks each time by the ratio of
-  // reel to marker, at least 3.
+  // reel to marker, at least 3. One that flutter bends too far for that stays where it was found.
   void refine() {
     constexpr int kPasses = 4;
     const double near = 0.001 * recording_.rate.value();
     for (int pass = 0; pass < kPasses; ++pass) {
       const double step = (last_.start - first_.start) / apart_;
-      first_ = find(rising_, step, first_.start - near, first_.start + near);
-      last_ = find(falling_, step, last_.start - near, last_.start + near);
+      const auto again = [&](const Marker& marker, MarkerFound& found) {
+        const MarkerFound here = find(marker, step, found.start - near, found.start + near, 0.0);
+        if (here.clear()) found = here;
+      };
+      again(rising_, first_);
+      again(falling_, last_);
     }
   }
 

@@ -285,10 +285,12 @@ TEST_CASE("an edited recording or one at another speed is refused with both dist
   CHECK(says(sentence, fmt::format("{:.3f} s", wanted)));
   CHECK(says(sentence, fmt::format("{:.3f} s", wanted - 0.5)));
   Recorder fast;
-  for (const double ppm : {1100.0, -1100.0, 4000.0}) {
+  for (const double ppm : {11'000.0, -11'000.0, 13'000.0}) {
     fast.ppm = ppm;
     CHECK(says(refusal(fast.record(reel), reel.layout, kCode), "another speed"));
   }
+  fast.ppm = 60'000.0;
+  CHECK(says(refusal(fast.record(reel), reel.layout, kCode), "at its speed to 1 %"));
   Waveform muted = reel.wave;
   std::fill(muted.samples.begin() + static_cast<long>(reel.layout.end_marker), muted.samples.end(),
             0.0);
