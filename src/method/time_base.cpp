@@ -330,6 +330,21 @@ SteadiedTake steady_time(const Waveform& response, const HoldLayout& hold,
   return Follower(response, hold, tones).run();
 }
 
+std::vector<std::size_t> steady_tones(const Stimulus& stimulus) {
+  constexpr double kWeak = 0.01;
+  if (stimulus.hold.blocks < 2) return {};
+  const auto spectrum = forward_fft(
+      std::span(stimulus.wave.samples).subspan(stimulus.hold.first_block, stimulus.hold.block));
+  double strongest = 0.0;
+  for (const auto& z : spectrum) strongest = std::max(strongest, std::abs(z));
+  std::vector<std::size_t> tones;
+  for (std::size_t k = 1; k < spectrum.size(); ++k) {
+    if (std::abs(spectrum[k]) > kWeak * strongest) tones.push_back(k);
+    if (tones.size() > 2) return {};
+  }
+  return tones;
+}
+
 SteadiedTake in_stimulus_time(const Waveform& response, const HoldLayout& hold,
                               std::span<const std::size_t> tones, const RigView& rig) {
   return rig.drifting_clock ? steady_time(response, hold, tones) : SteadiedTake{};

@@ -13,6 +13,7 @@
 
 #include <optional>
 #include <span>
+#include <vector>
 
 #include "method/block_spectra.h"
 
@@ -54,6 +55,10 @@ struct SteadiedTake {
 /// too weak to tell, the response stands.
 SteadiedTake steady_time(const Waveform& response, const HoldLayout& hold,
                          std::span<const std::size_t> tones);
+
+/// The one or two steady tones of a stimulus, in cycles per block; none where it has no two equal
+/// blocks, or other lines above a hundredth of the strongest.
+std::vector<std::size_t> steady_tones(const Stimulus& stimulus);
 
 /// What methods call: steady_time where the rig's clock drifts, else the response as it is.
 SteadiedTake in_stimulus_time(const Waveform& response, const HoldLayout& hold,

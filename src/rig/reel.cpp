@@ -166,6 +166,50 @@ class Search {
   MarkerFound first_, last_;
 };
 
+// rms over the 25 ms around every millisecond, which is longer than a period of 41 Hz.
+std::vector<double> outline(std::span<const double> x, std::size_t before, Hertz rate) {
+  const double step = 0.001 * rate.value(), half = 0.0125 * rate.value();
+  std::vector<double> sums(x.size() + 1, 0.0);
+  for (std::size_t n = 0; n < x.size(); ++n) sums[n + 1] = sums[n] + x[n] * x[n];
+  const auto sum_to = [&](double position) {
+    const double n = std::round(position) - static_cast<double>(before);
+    return sums[static_cast<std::size_t>(std::clamp(n, 0.0, static_cast<double>(x.size())))];
+  };
+  const double end = static_cast<double>(x.size() + 2 * before);
+  std::vector<double> out;
+  for (double at = 0.0; at < end; at += step) {
+    out.push_back(std::sqrt(std::max(0.0, sum_to(at + half) - sum_to(at - half))));
+  }
+  return out;
+}
+
+// Samples by which the outline of `stimulus` stands late in `around`, which holds it with `room`
+// on either side; 0 within 3 ms, and when nothing there looks like it.
+long lateness(const Waveform& stimulus, std::span<const double> around, std::size_t room) {
+  constexpr long kFarthest = 150, kLeast = 3;  // ms
+  constexpr double kAlike = 0.9;
+  const std::vector<double> known = outline(stimulus.samples, room, stimulus.rate);
+  const std::vector<double> heard = outline(around, 0, stimulus.rate);
+  const auto count = static_cast<long>(std::min(known.size(), heard.size()));
+  double best = kAlike;
+  long late = 0;
+  for (long lag = -kFarthest; lag <= kFarthest; ++lag) {
+    // Pearson's coefficient over the milliseconds that both have at every lag.
+    double n = 0, x = 0, y = 0, xx = 0, yy = 0, xy = 0;
+    for (long k = kFarthest; k + kFarthest < count; ++k) {
+      const double a = known[static_cast<std::size_t>(k)],
+                   b = heard[static_cast<std::size_t>(k + lag)];
+      n += 1, x += a, y += b, xx += a * a, yy += b * b, xy += a * b;
+    }
+    const double spread = (xx - x * x / n) * (yy - y * y / n);
+    if (!(spread > 0.0)) continue;
+    const double alike = (xy - x * y / n) / std::sqrt(spread);
+    if (alike > best) best = alike, late = lag;
+  }
+  if (std::abs(late) <= kLeast) return 0;
+  return std::lround(0.001 * static_cast<double>(late) * stimulus.rate.value());
+}
+
 }  // namespace
 
 ReelLayout lay_out(std::span<const std::size_t> stimulus_lengths, Hertz rate) {
@@ -218,10 +262,15 @@ void check_code(const ReelFound& found, std::uint32_t expected, const std::strin
 }
 
 Waveform cut(const Waveform& recording, const ReelFound& found, const ReelLayout& layout,
-             const ReelSlot& slot) {
-  return {layout.rate,
-          read_at(recording.samples, found.start + found.step * static_cast<double>(slot.start),
-                  found.step, slot.length)};
+             const ReelSlot& slot, const Waveform& stimulus) {
+  // The gap's 0.3 s on either side.
+  const std::size_t room = samples_in(kGap, layout.rate);
+  const double start = static_cast<double>(slot.start) - static_cast<double>(room);
+  const std::vector<double> around = read_at(recording.samples, found.start + found.step * start,
+                                             found.step, slot.length + 2 * room);
+  const long late = lateness(stimulus, around, room);
+  const auto first = around.begin() + static_cast<long>(room) + late;
+  return {layout.rate, {first, first + static_cast<long>(slot.length)}};
 }
 
 }  // namespace kneeprint

@@ -62,8 +62,10 @@ ReelFound find_reel(const Waveform& recording, const ReelLayout& layout, const s
 void check_code(const ReelFound& found, std::uint32_t expected, const std::string& file);
 
 /// The response in one slot, in the reel's own time: aligned sample for sample with its stimulus.
-/// What the recording no longer holds reads as silence.
+/// What the recording no longer holds reads as silence. Tape whose speed wanders leaves a slot away
+/// from where the markers' mean speed puts it: where the sound's outline stands off that of
+/// `stimulus` by 3 ms to 150 ms, the slot is cut there, by whole samples.
 Waveform cut(const Waveform& recording, const ReelFound& found, const ReelLayout& layout,
-             const ReelSlot& slot);
+             const ReelSlot& slot, const Waveform& stimulus);
 
 }  // namespace kneeprint

@@ -144,7 +144,8 @@ TEST_CASE("a minutes-long reel comes back from a worn recording: 44.1 kHz, inver
   // The response is the saturated stimulus, sample for sample.
   for (std::size_t i = 0; i < reel.stimuli.size(); ++i) {
     CAPTURE(i);
-    const Waveform response = cut(recording, found, reel.layout, reel.layout.slots[i]);
+    const Waveform response =
+        cut(recording, found, reel.layout, reel.layout.slots[i], reel.stimuli[i]);
     CHECK(response.rate == reel.layout.rate);
     REQUIRE(response.samples.size() == reel.stimuli[i].samples.size());
     double worst = 0.0;
