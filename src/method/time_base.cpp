@@ -21,14 +21,18 @@ namespace {
 constexpr double kTurn = 2.0 * std::numbers::pi;
 constexpr Seconds kAround{0.005};    // read in stimulus' time beyond the hold's ends
 constexpr Seconds kFarthest{0.008};  // excursion that still reads steady tones
-constexpr Seconds kKnots{0.020};
+constexpr Seconds kKnots{0.016};
+constexpr double kPeriodsPerKnot = 0.75;
 constexpr Seconds kShortestLook{0.010};
 constexpr double kPeriodsPerLook = 4.0;
 constexpr int kLooksPerLength = 4;  // overlap of the first, coarse looks
 constexpr double kSmall = 1e-3;     // samples: 1e-5 of amplitude at 20 kHz and 48 kHz
 constexpr int kMostPasses = 8;
 constexpr double kLineOverNoise = 5.0;  // noise alone passes in 4 of 10^6
-constexpr Hertz kSidebands{500.0};      // how far from the tone jitter is looked for
+// rad^2 of the tracker's own noise: beyond, a phase slips whole turns, and noise alone is drawn
+// into a tone (common practice for phase-locked loops).
+constexpr double kMostPhaseNoise = 0.1;
+constexpr Hertz kSidebands{500.0};  // how far from the tone jitter is looked for
 constexpr Hertz kSlowestFlutter{0.5}, kFastestFlutter{10.0};
 
 // e in samples: the sample m of the stimulus stands at m - e(m) in the response.
@@ -48,7 +52,7 @@ class Follower {
     SteadiedTake out;
     if (lead_ == 0) return out;
     const double period_s = seconds(static_cast<double>(hold_.block)) / static_cast<double>(lead_);
-    const double knots = std::max(kKnots.value(), period_s) * rate_.value();
+    const double knots = std::max(kKnots.value(), kPeriodsPerKnot * period_s) * rate_.value();
     const double length = static_cast<double>(end_ - begin_);
     UniformSpline e(static_cast<double>(begin_), static_cast<double>(end_),
                     static_cast<std::size_t>(std::max(1.0, std::round(length / knots))));
@@ -80,11 +84,14 @@ class Follower {
     const double variance = 0.5 * static_cast<double>(hold_.block) * noise.sigma * noise.sigma;
     const double excess = excess_variance(*spectra, emptied);
     if (!is_moved(e)) return left_alone(step, excess);
-    if (!is_significant(*fit, e, variance, noise.dof)) return left_alone(e, excess);
-
     // Mean of B(m)' (G'G)^-1 B(m) sigma^2 over the hold: K sigma^2 / sum of g^2, g being
     // stationary.
     const double own = static_cast<double>(e.size()) * variance / fit->weight();
+    const double slip = own * radians_per_sample(lead_) * radians_per_sample(lead_);
+    if (slip > kMostPhaseNoise || !is_significant(*fit, e, variance, noise.dof)) {
+      return left_alone(e, excess);
+    }
+
     out.time.jitter = Seconds(std::sqrt(seconds(seconds(own)) + excess));
     out.time.drifts = true;
     out.time.speed = (e.value(e.to()) - e.value(e.from())) / length;
@@ -174,13 +181,9 @@ class Follower {
     e.follow(values);
   }
 
-  double spread(const UniformSpline& e) const {
-    const auto [least, most] = std::ranges::minmax(e.coefficients());
-    return most - least;
-  }
-  bool is_moved(const UniformSpline& e) const { return spread(e) > kSmall; }
+  static bool is_moved(const UniformSpline& e) { return e.extent() > kSmall; }
   bool too_far(const UniformSpline& e) const {
-    return !(seconds(0.5 * spread(e)) < kFarthest.value());
+    return !(seconds(0.5 * e.extent()) < kFarthest.value());
   }
 
   void read_again(Waveform& out, const UniformSpline& e) const {

@@ -7,57 +7,85 @@
 #include <stdexcept>
 
 namespace kneeprint {
+namespace {
+
+constexpr std::size_t kWidth = UniformSpline::kWidth, kDegree = kWidth - 1;
+
+// B-splines of `degree` on whole knots, those that are not 0 from 0 to 1, at t (de Boor 1978,
+// ch. X, eq. 5).
+std::array<double, kWidth> splines(std::size_t degree, double t) {
+  std::array<double, kWidth> w{1.0};
+  for (std::size_t d = 1; d <= degree; ++d) {
+    const auto n = static_cast<double>(d);
+    for (std::size_t j = d + 1; j-- > 0;) {
+      const auto place = static_cast<double>(j);
+      const double before = j > 0 ? (t + n - place) * w[j - 1] : 0.0;
+      const double here = j < d ? (place + 1.0 - t) * w[j] : 0.0;
+      w[j] = (before + here) / n;
+    }
+  }
+  return w;
+}
+
+}  // namespace
 
 UniformSpline::UniformSpline(double from, double to, std::size_t intervals)
     : from_(from),
       to_(to),
       spacing_((to - from) / static_cast<double>(intervals)),
-      coefficients_(intervals + 3, 0.0) {
+      coefficients_(intervals + kDegree, 0.0) {
   if (!(to > from) || intervals < 1) throw std::invalid_argument("a spline needs an interval");
 }
 
 double UniformSpline::centre(std::size_t k) const {
-  return from_ + spacing_ * (static_cast<double>(k) - 1.0);
+  return from_ + spacing_ * (static_cast<double>(k) - 0.5 * (kDegree - 1));
 }
 
 UniformSpline::Place UniformSpline::place(double x) const {
   const double position = (x - from_) / spacing_;
-  const double last = static_cast<double>(coefficients_.size() - 4);
+  const double last = static_cast<double>(coefficients_.size() - kWidth);
   const double interval = std::clamp(std::floor(position), 0.0, last);
   return {static_cast<std::size_t>(interval), position - interval};
 }
 
 UniformSpline::Basis UniformSpline::at(double x) const {
   const auto [interval, t] = place(x);
-  const double r = 1.0 - t;
-  return {interval,
-          {r * r * r / 6.0, (3.0 * t * t * t - 6.0 * t * t + 4.0) / 6.0,
-           (3.0 * r * r * r - 6.0 * r * r + 4.0) / 6.0, t * t * t / 6.0}};
+  return {interval, splines(kDegree, t)};
 }
 
 double UniformSpline::value(double x) const {
   const Basis b = at(x);
   double sum = 0.0;
-  for (std::size_t k = 0; k < 4; ++k) sum += b.weights[k] * coefficients_[b.first + k];
+  for (std::size_t k = 0; k < kWidth; ++k) sum += b.weights[k] * coefficients_[b.first + k];
   return sum;
 }
 
 double UniformSpline::slope(double x) const {
   const auto [interval, t] = place(x);
-  const double r = 1.0 - t;
-  // Derivatives of the weights above.
-  const std::array<double, 4> weights{-0.5 * r * r, 1.5 * t * t - 2.0 * t, -1.5 * r * r + 2.0 * r,
-                                      0.5 * t * t};
+  // The derivative is a spline of the coefficients' differences, one degree lower.
+  const std::array<double, kWidth> lower = splines(kDegree - 1, t);
   double sum = 0.0;
-  for (std::size_t k = 0; k < 4; ++k) sum += weights[k] * coefficients_[interval + k];
+  for (std::size_t k = 0; k < kDegree; ++k) {
+    sum += lower[k] * (coefficients_[interval + k + 1] - coefficients_[interval + k]);
+  }
   return sum / spacing_;
+}
+
+double UniformSpline::extent() const {
+  double least = value(from_), most = least;
+  for (std::size_t i = 1; i <= coefficients_.size() - kDegree; ++i) {
+    const double v = value(from_ + spacing_ * static_cast<double>(i));
+    least = std::min(least, v);
+    most = std::max(most, v);
+  }
+  return most - least;
 }
 
 void UniformSpline::follow(const std::vector<double>& values) {
   if (values.size() != size()) throw std::invalid_argument("one value per coefficient");
   coefficients_ = values;
   for (std::size_t k = 1; k + 1 < values.size(); ++k) {
-    coefficients_[k] -= (values[k + 1] - 2.0 * values[k] + values[k - 1]) / 6.0;
+    coefficients_[k] -= (values[k + 1] - 2.0 * values[k] + values[k - 1]) / 4.0;
   }
 }
 
@@ -66,10 +94,10 @@ SplineFit::SplineFit(const UniformSpline& shape)
 
 void SplineFit::add(double x, double g, double r) {
   const UniformSpline::Basis b = shape_.at(x);
-  for (std::size_t i = 0; i < 4; ++i) {
+  for (std::size_t i = 0; i < kWidth; ++i) {
     const double gi = g * b.weights[i];
     right_[b.first + i] += gi * r;
-    for (std::size_t k = i; k < 4; ++k) bands_[b.first + i][k - i] += gi * g * b.weights[k];
+    for (std::size_t k = i; k < kWidth; ++k) bands_[b.first + i][k - i] += gi * g * b.weights[k];
   }
 }
 
@@ -80,7 +108,7 @@ std::vector<double> SplineFit::solve() const {
   if (!(largest > 0.0)) return std::vector<double>(right_.size(), 0.0);
   std::vector<Eigen::Triplet<double>> entries;
   for (int i = 0; i < n; ++i) {
-    for (int k = 0; k < 4 && i + k < n; ++k) {
+    for (int k = 0; k < static_cast<int>(kWidth) && i + k < n; ++k) {
       entries.emplace_back(i + k, i,
                            bands_[static_cast<std::size_t>(i)][static_cast<std::size_t>(k)]);
     }
@@ -99,7 +127,7 @@ double SplineFit::product(const std::vector<double>& a, const std::vector<double
   double sum = 0.0;
   for (std::size_t i = 0; i < bands_.size(); ++i) {
     sum += bands_[i][0] * a[i] * b[i];
-    for (std::size_t k = 1; k < 4 && i + k < bands_.size(); ++k) {
+    for (std::size_t k = 1; k < kWidth && i + k < bands_.size(); ++k) {
       sum += bands_[i][k] * (a[i] * b[i + k] + a[i + k] * b[i]);
     }
   }

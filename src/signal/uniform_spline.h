@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// A slow curve: a cubic spline on equidistant knots, and its least-squares fit to many noisy looks.
+// A slow curve: a quintic spline on equidistant knots, and its least-squares fit to many noisy
+// looks.
 #pragma once
 
 #include <array>
@@ -8,10 +9,10 @@
 
 namespace kneeprint {
 
-/// Sum of cubic B-splines (de Boor, A Practical Guide to Splines, 1978, ch. IX) over [from, to] in
-/// `intervals` equal intervals: intervals + 3 coefficients, 0 at first. Fitted to a sine of f
-/// cycles per interval it errs by sqrt(2 zeta(8)) f^4 of the sine's amplitude to first order
-/// (leading term of the spline's approximation error; Blu and Unser 1999, from memory).
+/// Sum of quintic B-splines (de Boor, A Practical Guide to Splines, 1978, ch. IX) over [from, to]
+/// in `intervals` equal intervals: intervals + 5 coefficients, 0 at first. Fitted to a sine of f
+/// cycles per interval it errs by about sqrt(2) f^6 of the sine's rms (leading term of the
+/// approximation error, sqrt(2 zeta(12)) f^6; Blu and Unser 1999, from memory).
 class UniformSpline {
  public:
   /// to > from, intervals >= 1; else std::invalid_argument (a programming error).
@@ -20,22 +21,25 @@ class UniformSpline {
   std::size_t size() const { return coefficients_.size(); }
   double from() const { return from_; }
   double to() const { return to_; }
-  /// Where coefficient k weighs most; the first and the last stand one interval outside.
+  /// Where coefficient k weighs most; the outer two at either end stand outside.
   double centre(std::size_t k) const;
   const std::vector<double>& coefficients() const { return coefficients_; }
   std::vector<double>& coefficients() { return coefficients_; }
 
-  /// The four splines that are not 0 at x; outside [from, to] the end polynomials go on.
+  static constexpr std::size_t kWidth = 6;
+  /// The splines that are not 0 at x; outside [from, to] the end polynomials go on.
   struct Basis {
     std::size_t first = 0;
-    std::array<double, 4> weights{};
+    std::array<double, kWidth> weights{};
   };
   Basis at(double x) const;
   double value(double x) const;
   double slope(double x) const;
+  /// Greatest less least value at the knots.
+  double extent() const;
 
-  /// The curve through or near `values`, given at the centres; cubics are met exactly, but for the
-  /// outermost coefficients (quasi-interpolation: c = v - v''/6; de Boor 1978, ch. XII).
+  /// The curve near `values`, given at the centres; parabolas are met exactly, but next to the ends
+  /// (quasi-interpolation: c = v - v''/4, in intervals; de Boor 1978, ch. XII).
   void follow(const std::vector<double>& values);
 
  private:
@@ -68,7 +72,8 @@ class SplineFit {
   double product(const std::vector<double>& a, const std::vector<double>& b) const;
 
   UniformSpline shape_;
-  std::vector<std::array<double, 4>> bands_;  // [i][k]: entry (i, i + k) of the symmetric matrix
+  std::vector<std::array<double, UniformSpline::kWidth>>
+      bands_;  // [i][k]: entry (i, i + k) of the symmetric matrix
   std::vector<double> right_;
 };
 
