@@ -46,11 +46,13 @@ class Search {
     found.code = code(found);
     if (expected_code) check_code(found, *expected_code, file_);
     find_end();
+    // Before they are matched at one speed: bent by flutter, a marker may then look inverted.
+    const double gain = (first_.match > last_.match ? first_ : last_).gain;
     refine();
     place(found, (last_.start - first_.start) / apart_);
     settle(found);
     found.clock_ppm = 1e6 * (found.step / nominal_ - 1.0);
-    found.polarity = first_.gain < 0.0 ? -1 : 1;
+    found.polarity = gain < 0.0 ? -1 : 1;
     found.match = std::min(first_.match, last_.match);
     if (std::abs(found.clock_ppm) > 1e6 * kLargestOffset) refuse_distance();
     return found;

@@ -113,7 +113,7 @@ std::vector<double> SplineFit::solve() const {
                            bands_[static_cast<std::size_t>(i)][static_cast<std::size_t>(k)]);
     }
     // Holds a coefficient that no look weighs, far below what any look says.
-    entries.emplace_back(i, i, 1e-12 * largest);
+    entries.emplace_back(i, i, 1e-14 * largest);
   }
   Eigen::SparseMatrix<double> matrix(n, n);
   matrix.setFromTriplets(entries.begin(), entries.end());
