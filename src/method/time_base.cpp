@@ -27,6 +27,7 @@ constexpr Seconds kShortestLook{0.010};
 constexpr double kPeriodsPerLook = 4.0;
 constexpr int kLooksPerLength = 4;  // overlap of the first, coarse looks
 constexpr double kSmall = 1e-3;     // samples: 1e-5 of amplitude at 20 kHz and 48 kHz
+constexpr double kFarToStep = 0.5;  // rad: Gauss and Newton's steps converge from there
 constexpr int kMostPasses = 8;
 constexpr double kLineOverNoise = 5.0;  // noise alone passes in 4 of 10^6
 // rad^2 of the tracker's own noise: beyond, a phase slips whole turns, and noise alone is drawn
@@ -50,7 +51,7 @@ class Follower {
 
   SteadiedTake run() {
     SteadiedTake out;
-    if (lead_ == 0) return out;
+    if (lead_ == 0 || hold_.blocks < 1 || end_ <= begin_) return out;
     const double period_s = seconds(static_cast<double>(hold_.block)) / static_cast<double>(lead_);
     const double knots = std::max(kKnots.value(), kPeriodsPerKnot * period_s) * rate_.value();
     const double length = static_cast<double>(end_ - begin_);
@@ -65,31 +66,33 @@ class Follower {
     Waveform steadied = response_;
     std::optional<SplineFit> fit;
     std::optional<BlockSpectra> spectra;
-    UniformSpline step = zero;
-    bool moved = is_moved(e);
-    if (!moved) e = zero;
+    // What turns the tone by less is found from no correction at all.
+    if (e.extent() * radians_per_sample(lead_) < kFarToStep) e = zero;
+    UniformSpline best = e;
     for (int pass = 0; pass < kMostPasses; ++pass) {
-      if (is_moved(e)) read_again(steadied, e);
+      e = best;
+      if (pass > 0 || is_moved(e)) read_again(steadied, e);
       spectra.emplace(steadied, hold_, stride_, emptied);
       fit.emplace(e);
       refine(*fit, *spectra, steadied);
+      UniformSpline step = zero;
       step.coefficients() = fit->solve();
+      for (std::size_t k = 0; k < e.size(); ++k) best.coefficients()[k] += step.coefficients()[k];
+      if (too_far(best)) return left_alone(best, 0.0);
       if (!is_moved(step)) break;
-      for (std::size_t k = 0; k < e.size(); ++k) e.coefficients()[k] += step.coefficients()[k];
-      if (too_far(e)) return left_alone(e, 0.0);
     }
     const BlockSpectra::Noise noise = spectra->noise_around(lead_, 0);
     // One component of a bin is the mean of block/2 samples' noise: sigma_bin^2 = 2 sigma^2 /
     // block.
     const double variance = 0.5 * static_cast<double>(hold_.block) * noise.sigma * noise.sigma;
     const double excess = excess_variance(*spectra, emptied);
-    if (!is_moved(e)) return left_alone(step, excess);
+    if (!is_moved(best)) return left_alone(best, excess);
     // Mean of B(m)' (G'G)^-1 B(m) sigma^2 over the hold: K sigma^2 / sum of g^2, g being
     // stationary.
     const double own = static_cast<double>(e.size()) * variance / fit->weight();
     const double slip = own * radians_per_sample(lead_) * radians_per_sample(lead_);
-    if (slip > kMostPhaseNoise || !is_significant(*fit, e, variance, noise.dof)) {
-      return left_alone(e, excess);
+    if (slip > kMostPhaseNoise || !is_significant(*fit, best, variance, noise.dof)) {
+      return left_alone(best, excess);
     }
 
     out.time.jitter = Seconds(std::sqrt(seconds(seconds(own)) + excess));
