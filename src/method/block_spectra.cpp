@@ -20,8 +20,11 @@ constexpr double kRayleigh95 = 2.4477468307;  // sqrt(-2 ln 0.05)
 
 }  // namespace
 
-BlockSpectra::BlockSpectra(const Waveform& take, const HoldLayout& hold, std::size_t stride)
-    : bin_width_(take.rate.value() / static_cast<double>(hold.block)), stride_(stride) {
+BlockSpectra::BlockSpectra(const Waveform& take, const HoldLayout& hold, std::size_t stride,
+                           std::size_t emptied)
+    : bin_width_(take.rate.value() / static_cast<double>(hold.block)),
+      stride_(stride),
+      emptied_(emptied) {
   const double scale = 2.0 / static_cast<double>(hold.block);
   for (int k = 0; k < hold.blocks; ++k) {
     const std::size_t start = hold.first_block + hold.block * static_cast<std::size_t>(k);
@@ -38,8 +41,8 @@ BlockSpectra::Noise BlockSpectra::noise_around(std::size_t bin, int first) const
       static_cast<long>(bins()) - 2;  // the last bin may be Nyquist: real, half the power
   for (int side : {-1, 1}) {
     int taken = 0;
-    for (long k = static_cast<long>(bin) + side; k >= 1 && k <= top && taken < kNeighboursEachSide;
-         k += side) {
+    for (long k = static_cast<long>(bin) + side * (1 + static_cast<long>(emptied_));
+         k >= 1 && k <= top && taken < kNeighboursEachSide; k += side) {
       if (k % static_cast<long>(stride_) == 0) continue;
       ++taken;
       for (int b = first; b < blocks(); ++b) {

@@ -21,8 +21,10 @@ struct Line {
 class BlockSpectra {
  public:
   /// Every block of `hold` in `take`. `stride`: all lines that the stimulus can cause stand on
-  /// multiples of so many bins; the bins between show the noise.
-  BlockSpectra(const Waveform& take, const HoldLayout& hold, std::size_t stride);
+  /// multiples of so many bins; the bins between show the noise, but for `emptied` bins on either
+  /// side of a line (SteadiedTake::emptied).
+  BlockSpectra(const Waveform& take, const HoldLayout& hold, std::size_t stride,
+               std::size_t emptied = 0);
 
   int blocks() const { return static_cast<int>(spectra_.size()); }
   std::size_t bins() const { return spectra_.front().size(); }
@@ -53,6 +55,7 @@ class BlockSpectra {
   std::vector<std::vector<std::complex<double>>> spectra_;
   double bin_width_ = 0.0;
   std::size_t stride_ = 1;
+  std::size_t emptied_ = 0;
 };
 
 /// 95 % upper limit of an amplitude that was read as `read` under Gaussian noise of `u` per

@@ -95,6 +95,10 @@ struct RigView {
   /// Lower than the take's own rate when a reel was recorded at another: what it can show ends
   /// there.
   std::optional<Hertz> recorded_rate;
+  /// What comes back ran in a recorder's own time: tones tell it (method/time_base.h).
+  bool drifting_clock = false;
+  /// Told by the reel's markers where the recorder's time is too uneven for a tone's phase to tell.
+  std::optional<int> marker_polarity;
 
   Hertz usable_rate(Hertz take_rate) const {
     return recorded_rate ? std::min(*recorded_rate, take_rate) : take_rate;

@@ -10,6 +10,7 @@
 #include "method/hold.h"
 #include "method/reading.h"
 #include "method/rig_curvature.h"
+#include "method/time_base.h"
 
 namespace kneeprint {
 namespace {
@@ -128,7 +129,8 @@ class SteadyReading {
         rate_(take.response.rate),
         tone_(tone_of(spec, rate_)),
         layout_(stimulus(spec, rate_).hold),
-        spectra_(take.response, layout_, tone_.cycles) {}
+        steadied_(in_stimulus_time(take.response, layout_, std::array{tone_.cycles}, rig)),
+        spectra_(steadied_.or_else(take.response), layout_, tone_.cycles, steadied_.emptied) {}
 
   TakeVerdict read(Curves& out);
 
@@ -160,7 +162,7 @@ class SteadyReading {
         std::abs(own) * ret_ratio(order).response * std::polar(1.0, (1.0 - order) * std::arg(own));
     l.mean /= share;
     l.u /= std::abs(share);
-    return l;
+    return steadied_.time.with_loss(l, order * tone_.frequency);
   }
   LoopResponse::Share ret_ratio(int order) const {
     return rig_.response.ret_ratio(order * tone_.frequency, tone_.frequency);
@@ -172,6 +174,7 @@ class SteadyReading {
   Hertz rate_;
   CoherentTone tone_;
   HoldLayout layout_;
+  SteadiedTake steadied_;
   BlockSpectra spectra_;
   int first_ = 0;
   Flag take_flag_ = Flag::none;
@@ -218,6 +221,7 @@ void SteadyReading::read_fundamental(LevelPoint& level) {
   const double degrees = std::abs(wrapped_degrees(transfer_phase()));
   if (degrees < 60.0) level.polarity = 1.0;
   if (degrees > 120.0) level.polarity = -1.0;
+  if (rig_.marker_polarity) level.polarity = *rig_.marker_polarity;
 }
 
 // The rig's residual at these converter levels. Orders 2 and 3 bend the response as a whole, so

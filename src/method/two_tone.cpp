@@ -99,10 +99,17 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
       rate_(take.response.rate),
       tones_(coherent(pair, spec, rate_)),
       held_(held(pair, spec, rate_)),
-      spectra_(take.response, held_.hold, std::gcd(tones_.cycles1, tones_.cycles2)),
+      steadied_(in_stimulus_time(take.response, held_.hold,
+                                 std::array{tones_.cycles1, tones_.cycles2}, rig)),
+      spectra_(steadied_.or_else(take.response), held_.hold,
+               std::gcd(tones_.cycles1, tones_.cycles2), steadied_.emptied),
       products_(products_to_order(kHighestOrder, tones_.cycles1, tones_.cycles2)) {
-  const std::size_t stride = std::gcd(tones_.cycles1, tones_.cycles2);
-  if (held_.tail.blocks > 0) alone_spectra_.emplace(take.response, held_.tail, stride);
+  if (held_.tail.blocks > 0) {
+    const SteadiedTake alone =
+        in_stimulus_time(take.response, held_.tail, std::array{tones_.cycles2}, rig);
+    alone_spectra_.emplace(alone.or_else(take.response), held_.tail,
+                           std::gcd(tones_.cycles1, tones_.cycles2));
+  }
   std::vector<std::size_t> watched;
   for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
     if (in_reach(p)) watched.push_back(bin(p));
@@ -170,7 +177,8 @@ Line TwoToneReading::product(ProductIndex p) const {
   // A product at a negative frequency shows as the conjugate at the positive one.
   const bool negative = p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value() < 0.0;
   const double sign = negative ? -1.0 : 1.0;
-  Line l = spectra_.mean(bin(p), first_, [&](int b) { return sign * turn(p, b); });
+  Line l = steadied_.time.with_loss(
+      spectra_.mean(bin(p), first_, [&](int b) { return sign * turn(p, b); }), frequency(p));
   // The tones' own turns in the return are given back: their phases were taken as recorded.
   const auto own = [&](Hertz f) { return rig_.response.ret(f).response; };
   const std::complex<double> share =

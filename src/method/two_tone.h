@@ -21,6 +21,7 @@
 #include "method/method.h"
 #include "method/products.h"
 #include "method/reading.h"
+#include "method/time_base.h"
 
 namespace kneeprint {
 
@@ -135,6 +136,7 @@ class TwoToneReading {
   Hertz rate_;
   CoherentPair tones_;
   HeldStimulus held_;
+  SteadiedTake steadied_;
   BlockSpectra spectra_;
   std::optional<BlockSpectra> alone_spectra_;
   std::vector<ProductIndex> products_;

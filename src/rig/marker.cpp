@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <cmath>
 #include <complex>
+#include <functional>
 #include <numbers>
 #include <numeric>
 
@@ -67,6 +68,42 @@ Likeness look(std::span<const double> known, std::span<const double> heard, long
   return best;
 }
 
+// Half a step off still leaves half the likeness: by 0.2 % a marker slips against its image by
+// pi * 0.004 * 22800 Hz/s * (0.125 s)^2 = 4.5 rad from its middle to its ends.
+constexpr double kSpeedStep = 0.004;
+
+// 1 first, then ever further away.
+std::vector<double> speeds_within(double room) {
+  std::vector<double> out{1.0};
+  for (double off = kSpeedStep; off < room + 0.5 * kSpeedStep; off += kSpeedStep) {
+    out.push_back(1.0 + off);
+    out.push_back(1.0 - off);
+  }
+  return out;
+}
+
+// Another speed than 1 must be clearly likelier: a filter, too, costs likeness, and lets speeds
+// nearby look a little better.
+MarkerFound likeliest(const std::function<MarkerFound(double)>& at_speed,
+                      const std::vector<double>& tried) {
+  constexpr double kSureOfOne = 0.97, kClearlyBetter = 0.02, kFine = 0.001, kFinest = 5e-5;
+  const MarkerFound at_one = at_speed(1.0);
+  if (tried.size() == 1 || at_one.match > kSureOfOne) return at_one;
+  const auto [slowest, fastest] = std::ranges::minmax(tried);
+  MarkerFound best = at_one;
+  const auto consider = [&](double speed) {
+    const MarkerFound here = at_speed(speed);
+    if (here.match > best.match) best = here;
+  };
+  for (double speed = slowest; speed <= fastest + 0.5 * kFine; speed += kFine) consider(speed);
+  for (double step = 0.5 * kFine; step > kFinest; step *= 0.5) {
+    const double middle = best.speed;
+    consider(middle - step);
+    consider(middle + step);
+  }
+  return best.match > at_one.match + kClearlyBetter ? best : at_one;
+}
+
 }  // namespace
 
 Marker::Marker(Sweep sweep, Hertz reel_rate)
@@ -89,9 +126,10 @@ std::vector<double> Marker::samples(Hertz rate) const {
 bool MarkerFound::clear() const { return match >= kClear; }
 
 MarkerFound find_marker(const Marker& marker, std::span<const double> recording, Hertz rate,
-                        long from, long to) {
-  const std::vector<double> known = marker.samples(rate);
-  const auto length = static_cast<long>(known.size()), end = static_cast<long>(recording.size());
+                        long from, long to, double speeds) {
+  const auto longest =
+      static_cast<long>(std::ceil(cycles(rate, Marker::kLength) / (1.0 - std::abs(speeds)))) + 1;
+  const auto end = static_cast<long>(recording.size());
   const auto near = static_cast<long>(cycles(rate, kPeakWithin));
   // What is filtered reaches further than what is compared, by as much as the filter rings.
   const auto band = [&](long first, long last) {
@@ -101,17 +139,22 @@ MarkerFound find_marker(const Marker& marker, std::span<const double> recording,
         recording.subspan(static_cast<std::size_t>(first), static_cast<std::size_t>(last - first)),
         marker, rate);
   };
+  const std::vector<double> tried = speeds_within(speeds);
   from = std::max(0L, from);
-  to = std::min(to, end - length + 1);
+  to = std::min(to, end - static_cast<long>(marker.samples(rate).size()) + 1);
   Likeness best;
-  // In pieces, so that an hour of recording costs no more memory than a minute.
+  // In pieces, so that an hour of recording costs no more memory than a minute; every speed in one
+  // piece before the next, so that the first marker is found and not a later likeness.
   for (long start = from; start < to && best.match < kClear; start += kPiece) {
     const long last = std::min(kPiece, to - start) - 1;
     const long margin = std::min(start, near);
-    const std::vector<double> heard = band(start - margin, start + last + length + near);
-    const Likeness here =
-        look(known, std::span(heard).subspan(static_cast<std::size_t>(margin)), last);
-    if (here.match > best.match) best = {start + here.lag, here.match};
+    const std::vector<double> heard = band(start - margin, start + last + longest + near);
+    for (const double speed : tried) {
+      const Likeness here = look(marker.samples(rate / speed),
+                                 std::span(heard).subspan(static_cast<std::size_t>(margin)), last);
+      if (here.match > best.match) best = {start + here.lag, here.match};
+      if (best.match >= kClear) break;
+    }
   }
   MarkerFound found;
   if (best.match < kClear) {
@@ -120,12 +163,12 @@ MarkerFound find_marker(const Marker& marker, std::span<const double> recording,
     return found;
   }
   const long margin = std::min(best.lag, near);
-  const std::vector<double> heard = band(best.lag - margin, best.lag + length + 2 * near);
-  const Delay d = find_delay(known, heard, margin, margin + near);
-  found.start = static_cast<double>(best.lag - margin) + d.samples;
-  found.gain = d.gain;
-  found.match = d.match;
-  return found;
+  const std::vector<double> heard = band(best.lag - margin, best.lag + longest + 2 * near);
+  const auto at_speed = [&](double speed) {
+    const Delay d = find_delay(marker.samples(rate / speed), heard, 0, margin + near);
+    return MarkerFound{static_cast<double>(best.lag - margin) + d.samples, d.gain, d.match, speed};
+  };
+  return likeliest(at_speed, tried);
 }
 
 }  // namespace kneeprint

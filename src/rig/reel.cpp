@@ -16,7 +16,10 @@ namespace kneeprint {
 namespace {
 
 constexpr Seconds kSilence{0.5}, kGap{0.3};
-constexpr double kLargestOffset = 1000e-6;
+// Speeds are accepted up to 1 %, and a little more for what flutter moves the markers by.
+constexpr double kLargestOffset = 0.0102, kSearched = 0.0125;
+// Markers are placed to this; less is no drift, and no delay by a fraction of a sample.
+constexpr double kNoDrift = 0.02;
 
 // The markers of one reel in one recording.
 class Search {
@@ -39,14 +42,17 @@ class Search {
     }
     find_start();
     ReelFound found;
-    place(found, nominal_);
+    place(found, nominal_ / first_.speed);
     found.code = code(found);
     if (expected_code) check_code(found, *expected_code, file_);
     find_end();
+    // Before they are matched at one speed: bent by flutter, a marker may then look inverted.
+    const double gain = (first_.match > last_.match ? first_ : last_).gain;
     refine();
     place(found, (last_.start - first_.start) / apart_);
+    settle(found);
     found.clock_ppm = 1e6 * (found.step / nominal_ - 1.0);
-    found.polarity = first_.gain < 0.0 ? -1 : 1;
+    found.polarity = gain < 0.0 ? -1 : 1;
     found.match = std::min(first_.match, last_.match);
     if (std::abs(found.clock_ppm) > 1e6 * kLargestOffset) refuse_distance();
     return found;
@@ -69,9 +75,10 @@ class Search {
   long size() const { return static_cast<long>(recording_.samples.size()); }
   double seconds(double samples) const { return samples / recording_.rate.value(); }
 
-  MarkerFound find(const Marker& marker, double step, double from, double to) const {
+  MarkerFound find(const Marker& marker, double step, double from, double to,
+                   double speeds = kSearched) const {
     return find_marker(marker, recording_.samples, step * layout_.rate, std::lround(from),
-                       std::lround(to));
+                       std::lround(to), speeds);
   }
 
   void place(ReelFound& found, double step) const {
@@ -79,12 +86,22 @@ class Search {
     found.start = first_.start - step * static_cast<double>(layout_.start_marker);
   }
 
+  // A recording in the reel's own time is read as it is: what never drifted is not read between its
+  // samples.
+  void settle(ReelFound& found) const {
+    if (std::abs(found.step - 1.0) * apart_ > kNoDrift) return;
+    place(found, 1.0);
+    if (std::abs(found.start - std::round(found.start)) < kNoDrift) {
+      found.start = std::round(found.start);
+    }
+  }
+
   void find_start() {
     first_ = find(rising_, nominal_, 0.0, static_cast<double>(size()));
     if (!first_.clear()) {
       refuse(fmt::format(
           "no start marker found (best likeness {:.2f}). Is this the recording of a reel, from "
-          "before its first chirp on, and the right channel (--channel)?",
+          "before its first chirp on, at its speed to 1 %, and the right channel (--channel)?",
           first_.match));
     }
   }
@@ -106,7 +123,7 @@ class Search {
   void find_end() {
     const double expected = first_.start + nominal_ * apart_;
     // A falling sweep at a wrong speed is found up to a millisecond off.
-    const double room = nominal_ * apart_ * kLargestOffset + 0.001 * recording_.rate.value();
+    const double room = nominal_ * apart_ * kSearched + 0.001 * recording_.rate.value();
     last_ = find(falling_, nominal_, expected - room, expected + room + 1.0);
     if (last_.clear()) return;
     last_ = find(falling_, nominal_, first_.start, static_cast<double>(size()));
@@ -127,14 +144,18 @@ class Search {
 
   // A marker that runs at another speed is found late or early, as a sweep trades time for
   // frequency. Seen again at the speed just found, that error shrinks each time by the ratio of
-  // reel to marker, at least 3.
+  // reel to marker, at least 3. One that flutter bends too far for that stays where it was found.
   void refine() {
     constexpr int kPasses = 4;
     const double near = 0.001 * recording_.rate.value();
     for (int pass = 0; pass < kPasses; ++pass) {
       const double step = (last_.start - first_.start) / apart_;
-      first_ = find(rising_, step, first_.start - near, first_.start + near);
-      last_ = find(falling_, step, last_.start - near, last_.start + near);
+      const auto again = [&](const Marker& marker, MarkerFound& found) {
+        const MarkerFound here = find(marker, step, found.start - near, found.start + near, 0.0);
+        if (here.clear()) found = here;
+      };
+      again(rising_, first_);
+      again(falling_, last_);
     }
   }
 
@@ -146,6 +167,50 @@ class Search {
   double apart_;    ///< samples of the reel from marker to marker
   MarkerFound first_, last_;
 };
+
+// rms over the 25 ms around every millisecond, which is longer than a period of 41 Hz.
+std::vector<double> outline(std::span<const double> x, std::size_t before, Hertz rate) {
+  const double step = 0.001 * rate.value(), half = 0.0125 * rate.value();
+  std::vector<double> sums(x.size() + 1, 0.0);
+  for (std::size_t n = 0; n < x.size(); ++n) sums[n + 1] = sums[n] + x[n] * x[n];
+  const auto sum_to = [&](double position) {
+    const double n = std::round(position) - static_cast<double>(before);
+    return sums[static_cast<std::size_t>(std::clamp(n, 0.0, static_cast<double>(x.size())))];
+  };
+  const double end = static_cast<double>(x.size() + 2 * before);
+  std::vector<double> out;
+  for (double at = 0.0; at < end; at += step) {
+    out.push_back(std::sqrt(std::max(0.0, sum_to(at + half) - sum_to(at - half))));
+  }
+  return out;
+}
+
+// Samples by which the outline of `stimulus` stands late in `around`, which holds it with `room`
+// on either side; 0 within 3 ms, and when nothing there looks like it.
+long lateness(const Waveform& stimulus, std::span<const double> around, std::size_t room) {
+  constexpr long kFarthest = 150, kLeast = 3;  // ms
+  constexpr double kAlike = 0.9;
+  const std::vector<double> known = outline(stimulus.samples, room, stimulus.rate);
+  const std::vector<double> heard = outline(around, 0, stimulus.rate);
+  const auto count = static_cast<long>(std::min(known.size(), heard.size()));
+  double best = kAlike;
+  long late = 0;
+  for (long lag = -kFarthest; lag <= kFarthest; ++lag) {
+    // Pearson's coefficient over the milliseconds that both have at every lag.
+    double n = 0, x = 0, y = 0, xx = 0, yy = 0, xy = 0;
+    for (long k = kFarthest; k + kFarthest < count; ++k) {
+      const double a = known[static_cast<std::size_t>(k)],
+                   b = heard[static_cast<std::size_t>(k + lag)];
+      n += 1, x += a, y += b, xx += a * a, yy += b * b, xy += a * b;
+    }
+    const double spread = (xx - x * x / n) * (yy - y * y / n);
+    if (!(spread > 0.0)) continue;
+    const double alike = (xy - x * y / n) / std::sqrt(spread);
+    if (alike > best) best = alike, late = lag;
+  }
+  if (std::abs(late) <= kLeast) return 0;
+  return std::lround(0.001 * static_cast<double>(late) * stimulus.rate.value());
+}
 
 }  // namespace
 
@@ -199,10 +264,15 @@ void check_code(const ReelFound& found, std::uint32_t expected, const std::strin
 }
 
 Waveform cut(const Waveform& recording, const ReelFound& found, const ReelLayout& layout,
-             const ReelSlot& slot) {
-  return {layout.rate,
-          read_at(recording.samples, found.start + found.step * static_cast<double>(slot.start),
-                  found.step, slot.length)};
+             const ReelSlot& slot, const Waveform& stimulus) {
+  // The gap's 0.3 s on either side.
+  const std::size_t room = samples_in(kGap, layout.rate);
+  const double start = static_cast<double>(slot.start) - static_cast<double>(room);
+  const std::vector<double> around = read_at(recording.samples, found.start + found.step * start,
+                                             found.step, slot.length + 2 * room);
+  const long late = lateness(stimulus, around, room);
+  const auto first = around.begin() + static_cast<long>(room) + late;
+  return {layout.rate, {first, first + static_cast<long>(slot.length)}};
 }
 
 }  // namespace kneeprint

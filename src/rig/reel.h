@@ -48,8 +48,10 @@ struct ReelFound {
 };
 
 /// Finds the markers and reads the code. `recording`: any sample rate that holds the markers,
-/// silence and noise at either end, any delay and gain, either polarity, a clock off by up to 1000
-/// ppm. Clean recordings give `start` to 0.02 sample and the length of the reel to 0.02 sample.
+/// silence and noise at either end, any delay and gain, either polarity, a speed off by up to 1 %,
+/// flutter of up to 0.2 %. Clean recordings by a steady clock give `start` to 0.02 sample and the
+/// length of the reel to 0.02 sample (within that, no drift and no fraction is assumed); flutter
+/// moves both markers by its own excursion.
 /// Throws InputError, naming `file`: sample rate too low, no start marker, code unreadable or
 /// (where `expected_code` is given) of another plan, no end marker, recording ends too early,
 /// markers too far apart or too close for this reel.
@@ -60,8 +62,10 @@ ReelFound find_reel(const Waveform& recording, const ReelLayout& layout, const s
 void check_code(const ReelFound& found, std::uint32_t expected, const std::string& file);
 
 /// The response in one slot, in the reel's own time: aligned sample for sample with its stimulus.
-/// What the recording no longer holds reads as silence.
+/// What the recording no longer holds reads as silence. Tape whose speed wanders leaves a slot away
+/// from where the markers' mean speed puts it: where the sound's outline stands off that of
+/// `stimulus` by 3 ms to 150 ms, the slot is cut there, by whole samples.
 Waveform cut(const Waveform& recording, const ReelFound& found, const ReelLayout& layout,
-             const ReelSlot& slot);
+             const ReelSlot& slot, const Waveform& stimulus);
 
 }  // namespace kneeprint

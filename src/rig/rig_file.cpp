@@ -174,6 +174,7 @@ std::string rig_json(const Rig& rig) {
   if (!rig.device.empty()) j["device"] = rig.device;
   j["rate_hz"] = rig.rate.value();
   if (rig.recorded_rate) j["recorded_rate_hz"] = rig.recorded_rate->value();
+  if (rig.marker_polarity) j["marker_polarity"] = *rig.marker_polarity;
   j["send"] = direction_json(rig.send_channel, rig.send_scale, rig.dc_coupled_send);
   j["return"] = direction_json(rig.return_channel, rig.return_scale, rig.dc_coupled_return);
   if (rig.reference_channel) {
@@ -195,7 +196,7 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
   const JsonFields f(value, origin);
   f.check_format(kFormat, kVersion);
   f.allow_only({"format", "version", "name", "kind", "device", "rate_hz", "recorded_rate_hz",
-                "send", "return", "reference", "wiring", "source_impedance_ohm",
+                "marker_polarity", "send", "return", "reference", "wiring", "source_impedance_ohm",
                 "load_impedance_ohm", "ceiling_dbfs", "calibrated_on", "invented", "response",
                 "floor"});
   Rig rig;
@@ -211,6 +212,10 @@ Rig parse_rig(const std::string& json, const std::string& origin) {
   rig.rate = Hertz(f.number("rate_hz", {8000.0, 192000.0}));
   if (f.has("recorded_rate_hz")) {
     rig.recorded_rate = Hertz(f.number("recorded_rate_hz", {4000.0, 1e6}));
+  }
+  if (f.has("marker_polarity")) {
+    rig.marker_polarity = f.integer("marker_polarity", -1, 1);
+    if (*rig.marker_polarity == 0) f.refuse("marker_polarity", "found 0; expected 1 or -1");
   }
   const Direction send = read_direction(f.object("send")), ret = read_direction(f.object("return"));
   rig.send_channel = send.channel;

@@ -24,6 +24,7 @@ struct Rig {
   std::string reference_tap;  ///< "terminals" (a split at the unit's input) or "second-output"
   Hertz rate{48000.0};
   std::optional<Hertz> recorded_rate;  ///< a reel's recording, when it was made at another rate
+  std::optional<int> marker_polarity;  ///< of a recording whose time is uneven: +1 or -1
   LevelScale send_scale;               ///< uncalibrated when the file states no full-scale voltage
   LevelScale return_scale;
   bool dc_coupled_send = false;

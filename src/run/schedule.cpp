@@ -85,6 +85,8 @@ RigView view_of(const Rig& rig) {
   view.sees_dc = rig.dc_coupled_return;
   view.gain_known = rig.kind != RigKind::reel || view.send.is_calibrated();
   view.recorded_rate = rig.recorded_rate;
+  view.drifting_clock = rig.kind == RigKind::reel;
+  view.marker_polarity = rig.marker_polarity;
   return view;
 }
 

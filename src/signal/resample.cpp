@@ -107,6 +107,14 @@ std::shared_ptr<const Kernel> kernel_for(double stretch) {
   return last;
 }
 
+// Positions more than the widest kernel before the signal, or beyond its end, are silent.
+double read_one(const Kernel& kernel, std::span<const double> x, double position) {
+  constexpr double kWidest = 8.0 * kHalfWidth;
+  if (!(position >= -kWidest && position <= static_cast<double>(x.size()) + kWidest)) return 0.0;
+  const double whole = std::floor(position);
+  return kernel.read(x, static_cast<long>(whole), position - whole);
+}
+
 }  // namespace
 
 std::vector<double> read_at(std::span<const double> x, double start, double step,
@@ -115,14 +123,17 @@ std::vector<double> read_at(std::span<const double> x, double start, double step
   if (!(std::abs(start) < 1e15)) throw std::invalid_argument("start is beyond any recording");
   const std::shared_ptr<const Kernel> kernel = kernel_for(std::max(1.0, step));
   std::vector<double> out(count);
-  // Positions more than the widest kernel before the signal, or beyond its end, are silent.
-  const double silent = static_cast<double>(x.size()) + 8.0 * kHalfWidth;
   for (std::size_t n = 0; n < count; ++n) {
-    const double position = start + static_cast<double>(n) * step;
-    if (position < -8.0 * kHalfWidth || position > silent) continue;
-    const double whole = std::floor(position);
-    out[n] = kernel->read(x, static_cast<long>(whole), position - whole);
+    out[n] = read_one(*kernel, x, start + static_cast<double>(n) * step);
   }
+  return out;
+}
+
+std::vector<double> read_at(std::span<const double> x, std::span<const double> positions) {
+  const std::shared_ptr<const Kernel> kernel = kernel_for(1.0);
+  std::vector<double> out(positions.size());
+  std::ranges::transform(positions, out.begin(),
+                         [&](double position) { return read_one(*kernel, x, position); });
   return out;
 }
 

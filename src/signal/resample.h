@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Reading a waveform between its samples: removal of a clock's offset and drift.
+// Reading a waveform between its samples: removal of a clock's offset and drift,
+// and of a recorder's flutter.
 #pragma once
 
 #include <span>
@@ -14,5 +15,10 @@ namespace kneeprint {
 /// step <= 1.2; step > 1 narrows the kernel's pass-band so that nothing folds. 0 < step <= 8.
 std::vector<double> read_at(std::span<const double> x, double start, double step,
                             std::size_t count);
+
+/// out[n] = x(positions[n]) by the same kernel: for positions that advance by nearly one sample,
+/// such as a recorder's uneven time. Nothing is narrowed: where they advance by 1 + q, what lies
+/// above 1 - q of the Nyquist rate folds to just below it. What is no number reads as silence.
+std::vector<double> read_at(std::span<const double> x, std::span<const double> positions);
 
 }  // namespace kneeprint

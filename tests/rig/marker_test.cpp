@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numbers>
 #include <random>
 
 namespace kneeprint {
@@ -76,6 +77,42 @@ TEST_CASE("the first of two is found, across the pieces of a long search, and on
   CHECK(std::abs(find_marker(marker, x, kRate, 600'000, 1'000'000).start - second) < 0.01);
   CHECK(!find_marker(marker, x, kRate, 560'000, 880'000).clear());
   CHECK(!find_marker(marker, x, kRate, 900'010, 1'000'000).clear());
+}
+
+TEST_CASE("a marker at another speed, or bent by flutter, is found with its speed") {
+  const Marker rising(Sweep::rising, kRate), falling(Sweep::falling, kRate);
+  for (const double speed : {0.99, 0.9937, 0.998, 1.0, 1.0015, 1.006, 1.01}) {
+    CAPTURE(speed);
+    for (const Marker& marker : {rising, falling}) {
+      std::vector<double> x(60'000);
+      for (std::size_t n = 0; n < x.size(); ++n) {
+        x[n] = 0.1 * marker.at(speed * (static_cast<double>(n) - 30'000.3) * period(kRate));
+      }
+      const MarkerFound found = find_marker(marker, x, kRate, 0, 60'000, 0.0125);
+      CHECK(found.clear());
+      CHECK(found.match > 0.99);
+      CHECK(std::abs(found.speed - speed) < 1e-4);
+      // Slower by q it ends 0.25 s q later; found by q amiss, half as far off.
+      CHECK(std::abs(found.start - 30'000.3) < 1.0);
+    }
+  }
+  for (const double flutter_hz : {0.5, 2.0, 5.0, 10.0}) {
+    for (const double phase : {0.0, 1.0, 2.0, 3.0}) {
+      CAPTURE(flutter_hz);
+      CAPTURE(phase);
+      const double turn = 2.0 * std::numbers::pi * flutter_hz;
+      std::vector<double> x(60'000);
+      for (std::size_t n = 0; n < x.size(); ++n) {
+        const double t = 1.008 * (static_cast<double>(n) - 30'000.0) / kRate.value();
+        x[n] = 0.1 * rising.at(Seconds(t + 0.002 / turn * std::sin(turn * t + phase)));
+      }
+      const MarkerFound found = find_marker(rising, x, kRate, 0, 60'000, 0.0125);
+      CHECK(found.clear());
+      // The flutter's excursion of up to 0.64 ms, and what its speed makes of a sweep's time: the
+      // 10 ms of steady tone around a hold bear a tenth of that.
+      CHECK(std::abs(found.start - 30'000.0) < 48.0);
+    }
+  }
 }
 
 TEST_CASE("noise alone stays far from clear over a million lags") {

@@ -42,6 +42,7 @@ Rig full_rig() {
   rig.reference_tap = "terminals";
   rig.rate = Hertz(96000.0);
   rig.recorded_rate = Hertz(44100.0);
+  rig.marker_polarity = -1;
   rig.send_scale = LevelScale::calibrated(VoltsRms(8.69), Decibels(0.05));
   rig.return_scale = LevelScale::calibrated(VoltsRms(1.23), Decibels(0.07));
   rig.dc_coupled_send = true;
@@ -104,6 +105,7 @@ TEST_CASE("every field comes back") {
   CHECK(b.reference_tap == "terminals");
   CHECK(b.rate == a.rate);
   CHECK(b.recorded_rate == a.recorded_rate);
+  CHECK(b.marker_polarity == -1);
   check_same(b.send_scale, a.send_scale);
   check_same(b.return_scale, a.return_scale);
   CHECK(b.dc_coupled_send);
@@ -186,6 +188,7 @@ TEST_CASE("every wrong field is refused by file, field, expected and found") {
       {"/rate_hz", "48k", "rate_hz", "found \"48k\"", "expected a number"},
       {"/rate_hz", kGone, "rate_hz", "missing", "expected a number"},
       {"/recorded_rate_hz", 0, "recorded_rate_hz", "found 0", "from 4000"},
+      {"/marker_polarity", 0, "marker_polarity", "found 0", "expected 1 or -1"},
       {"/send", kGone, "send", "missing", "expected an object"},
       {"/return", 1, "return", "found 1", "expected an object"},
       {"/send/channel", 0, "send.channel", "found 0", "whole number from 1"},

@@ -65,6 +65,24 @@ TEST_CASE("a slower reading lets nothing fold") {
   }
 }
 
+TEST_CASE("uneven positions are read as well as even ones") {
+  const std::vector<double> x = tones(0.9, 4000);
+  std::vector<double> positions;
+  for (int n = 0; n < 3000; ++n) {
+    // 0.4 % of flutter, 40 samples of excursion.
+    positions.push_back(500.0 + n + 40.0 * std::sin(1e-4 * n));
+  }
+  const std::vector<double> y = read_at(x, positions);
+  REQUIRE(y.size() == positions.size());
+  double worst = 0.0;
+  for (std::size_t n = 0; n < y.size(); ++n) {
+    worst = std::max(worst, std::abs(y[n] - tone(0.9, positions[n])));
+  }
+  CHECK(worst < kWanted);
+  const std::vector<double> nowhere{-1e12, std::nan(""), 1e12, INFINITY};
+  for (const double v : read_at(x, nowhere)) CHECK(v == 0.0);
+}
+
 TEST_CASE("far into a long signal the position keeps its precision") {
   CHECK(worst_error(0.9, 3'000'000.4321, 0.99997) < kWanted);
 }
