@@ -141,7 +141,8 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
                       pair.share2() * std::abs(rig.response.send(tones_.f2).response);
   drive_ = rig.send.level_of(spec.send) + Decibels::of_ratio(sent).value();
   if (take.reference != nullptr) {
-    const BlockSpectra reference(*take.reference, held_.hold, stride);
+    const BlockSpectra reference(*take.reference, held_.hold,
+                                 std::gcd(tones_.cycles1, tones_.cycles2));
     double peak = 0.0;
     for (const auto& [cycles, f] :
          {std::pair(tones_.cycles1, tones_.f1), std::pair(tones_.cycles2, tones_.f2)}) {
