@@ -55,7 +55,8 @@ Method ccif_difference() {
           [](const TakeSpec& s, Hertz r) { return two_tone_block_length(kCcif, s, r); },
           [](const TakeSpec& s, Hertz r) { return two_tone_stimulus(kCcif, s, r); },
           read,
-          predict};
+          predict,
+          [](const TakeSpec& s, Hertz r) { return two_tone_length(kCcif, s, r); }};
 }
 
 }  // namespace kneeprint

@@ -129,6 +129,8 @@ struct Method {
   /// The same products by a memoryless curve, for the stimulus' peak at the unit's input; nullptr
   /// for methods that the fit itself uses, or that no closed rule predicts.
   std::vector<PredictedProduct> (*predict)(const TwoToneCurve&, const StepOptions&, double peak);
+  /// Samples of the stimulus, where that is known without making it; nullptr: it has to be made.
+  std::size_t (*length)(const TakeSpec&, Hertz rate) = nullptr;
 };
 
 std::span<const Method> methods();

@@ -66,7 +66,8 @@ Method smpte_modulation() {
           [](const TakeSpec& s, Hertz r) { return two_tone_block_length(kSmpte, s, r); },
           [](const TakeSpec& s, Hertz r) { return two_tone_stimulus(kSmpte, s, r); },
           read,
-          predict};
+          predict,
+          [](const TakeSpec& s, Hertz r) { return two_tone_length(kSmpte, s, r); }};
 }
 
 }  // namespace kneeprint

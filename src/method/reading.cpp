@@ -32,9 +32,12 @@ RelativeReading relate(double amplitude, double u, double dof, const Line& refer
 
 bool reaches_full_scale(const Waveform& take, const HoldLayout& hold) {
   constexpr double kEnd = 0.9999;
-  const auto begin = take.samples.begin() + static_cast<long>(hold.first_block);
-  return std::any_of(begin, begin + static_cast<long>(hold.end() - hold.first_block),
-                     [](double x) { return std::abs(x) >= kEnd; });
+  // Without an early exit the loop runs on vectors; a clipped take is the exception.
+  bool reached = false;
+  for (std::size_t n = hold.first_block; n < hold.end(); ++n) {
+    reached |= std::abs(take.samples[n]) >= kEnd;
+  }
+  return reached;
 }
 
 Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,

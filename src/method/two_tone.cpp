@@ -23,6 +23,17 @@ std::size_t cycles_in(Hertz f, std::size_t block, Hertz rate) {
       std::llround(f.value() * static_cast<double>(block) / rate.value()));
 }
 
+HoldLayout hold_of(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
+  return held_layout(std::min(pair.f1, pair.f2), rate, block_of(pair, spec, rate),
+                     spec.hold_blocks);
+}
+
+HoldLayout tail_of(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
+  if (!pair.f2_alone) return {};
+  return tail_layout(std::min(pair.f1, pair.f2), rate, block_of(pair, spec, rate), spec.hold_blocks,
+                     kTailBlocks);
+}
+
 HeldStimulus held(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
   const double peak = sine_peak(spec.send);
   const std::array tones{Tone{pair.f1, pair.share1 * peak}, Tone{pair.f2, pair.share2 * peak}};
@@ -41,6 +52,11 @@ int two_tone_first_hold_blocks(const TonePair& pair, const TakeSpec& spec, Hertz
   return kept_blocks(spec.settings, two_tone_block_length(pair, spec, rate)) + 1;
 }
 
+std::size_t two_tone_length(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
+  return held_length(std::min(pair.f1, pair.f2), rate, block_of(pair, spec, rate), spec.hold_blocks,
+                     pair.f2_alone ? kTailBlocks : 0);
+}
+
 Stimulus two_tone_stimulus(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
   HeldStimulus h = held(pair, spec, rate);
   return {std::move(h.wave), h.hold, std::min(pair.f1, pair.f2)};
@@ -51,8 +67,8 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
     : pair_(pair),
       rig_(rig),
       rate_(take.response.rate),
-      hold_(held(pair, spec, rate_).hold),
-      tail_(held(pair, spec, rate_).tail),
+      hold_(hold_of(pair, spec, rate_)),
+      tail_(tail_of(pair, spec, rate_)),
       cycles1_(cycles_in(pair.f1, hold_.block, rate_)),
       cycles2_(cycles_in(pair.f2, hold_.block, rate_)),
       spectra_(take.response, hold_, std::gcd(cycles1_, cycles2_)) {

@@ -29,6 +29,7 @@ struct TonePair {
 
 int two_tone_first_hold_blocks(const TonePair& pair, const TakeSpec& spec, Hertz rate);
 Seconds two_tone_block_length(const TonePair& pair, const TakeSpec& spec, Hertz rate);
+std::size_t two_tone_length(const TonePair& pair, const TakeSpec& spec, Hertz rate);
 Stimulus two_tone_stimulus(const TonePair& pair, const TakeSpec& spec, Hertz rate);
 
 class TwoToneReading {
