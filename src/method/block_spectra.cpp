@@ -2,6 +2,7 @@
 #include "method/block_spectra.h"
 
 #include <algorithm>
+#include <array>
 #include <boost/math/distributions/fisher_f.hpp>
 #include <boost/math/distributions/non_central_chi_squared.hpp>
 #include <cmath>
@@ -9,6 +10,7 @@
 #include <vector>
 
 #include "quantity/chebyshev.h"
+#include "signal/median.h"
 
 namespace kneeprint {
 namespace {
@@ -19,27 +21,35 @@ constexpr int kNeighboursEachSide = 24;
 constexpr double kMedianEfficiency = 0.48;
 constexpr double kRayleigh95 = 2.4477468307;  // sqrt(-2 ln 0.05)
 
-// The 99.9 % quantile of F(dof1, dof2). Line after line of a take asks for the same one.
+// The 99.9 % quantile of F(dof1, dof2). Lines of a take ask for the same few again and again.
 double largest_ratio(double dof1, double dof2) {
   struct Asked {
     double dof1 = 0.0, dof2 = 0.0, quantile = 0.0;
   };
-  thread_local Asked last;
-  if (last.dof1 != dof1 || last.dof2 != dof2) {
-    last = {dof1, dof2, boost::math::quantile(boost::math::fisher_f(dof1, dof2), 0.999)};
+  thread_local std::array<Asked, 8> known;
+  thread_local std::size_t oldest = 0;
+  for (const Asked& k : known) {
+    if (k.dof1 == dof1 && k.dof2 == dof2) return k.quantile;
   }
-  return last.quantile;
+  Asked& place = known[oldest];
+  oldest = (oldest + 1) % known.size();
+  place = {dof1, dof2, boost::math::quantile(boost::math::fisher_f(dof1, dof2), 0.999)};
+  return place.quantile;
 }
+
+// Up to here an amplitude's upper limit is the noise threshold: a non-centrality of 5.99 (its
+// square) stays below 1 in more than 5 % of cases, so a smaller one satisfies the condition.
+constexpr double kThresholdRules = 1.0;
 
 // The non-centrality with which a chi-square of 2 dof stays below `x` in 5 % of cases.
 double centrality(double x) {
   const auto exact = [](double at) {
     return boost::math::non_central_chi_squared::find_non_centrality(2.0, at, 0.05);
   };
-  // From 1 to where the noise threshold ends (5.99) it is asked for line after line: 48 points hold
-  // it to the last bits (tests/method/block_spectra_test.cpp).
-  static const ChebyshevCurve curve(exact, 1.0, 6.0, 48);
-  return x >= curve.low() && x <= curve.high() ? curve(x) : exact(x);
+  // Line after line asks for it up to where the noise threshold ends (5.99): 48 points hold it to
+  // the last bits (tests/method/block_spectra_test.cpp).
+  static const ChebyshevCurve curve(exact, kThresholdRules, 6.0, 48);
+  return x <= curve.high() ? curve(x) : exact(x);
 }
 
 }  // namespace
@@ -80,10 +90,9 @@ BlockSpectra::Noise BlockSpectra::noise_around(std::size_t bin, int first) const
     }
   }
   if (powers.size() < 8) return {};
-  const auto middle = powers.begin() + static_cast<long>(powers.size() / 2);
-  std::nth_element(powers.begin(), middle, powers.end());
+  const double median = upper_median(powers);
   // |Z|^2 of Gaussian noise is exponential with mean 2 sigma^2 and median 2 sigma^2 ln 2.
-  return {std::sqrt(*middle / (2.0 * std::numbers::ln2)),
+  return {std::sqrt(median / (2.0 * std::numbers::ln2)),
           2.0 * kMedianEfficiency * static_cast<double>(powers.size())};
 }
 
@@ -136,8 +145,7 @@ double amplitude_upper_limit(double read, double u) {
   const double normalised = (read / u) * (read / u);
   const double least = noise_threshold(u);
   // With amplitude nu, (read/u)^2 is non-central chi-square with 2 dof and non-centrality (nu/u)^2.
-  // Below the 5 % point of noise alone no amplitude satisfies the condition; `least` stands then.
-  if (normalised <= -2.0 * std::log(0.95)) return least;
+  if (normalised <= kThresholdRules) return least;
   return std::max(least, u * std::sqrt(centrality(normalised)));
 }
 

@@ -32,12 +32,19 @@ RelativeReading relate(double amplitude, double u, double dof, const Line& refer
 
 bool reaches_full_scale(const Waveform& take, const HoldLayout& hold) {
   constexpr double kEnd = 0.9999;
-  // Without an early exit the loop runs on vectors; a clipped take is the exception.
-  bool reached = false;
-  for (std::size_t n = hold.first_block; n < hold.end(); ++n) {
-    reached |= std::abs(take.samples[n]) >= kEnd;
+  // Peaks side by side and no early exit, so that the loop runs on vectors: a clipped take is the
+  // exception.
+  constexpr std::size_t kLanes = 8;
+  std::array<double, kLanes> peaks{};
+  std::size_t n = hold.first_block;
+  for (; n + kLanes <= hold.end(); n += kLanes) {
+    for (std::size_t i = 0; i < kLanes; ++i) {
+      const double x = std::abs(take.samples[n + i]);
+      peaks[i] = x > peaks[i] ? x : peaks[i];
+    }
   }
-  return reached;
+  for (; n < hold.end(); ++n) peaks[0] = std::max(peaks[0], std::abs(take.samples[n]));
+  return *std::max_element(peaks.begin(), peaks.end()) >= kEnd;
 }
 
 Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,
