@@ -22,7 +22,7 @@ struct Closer {
 };
 using SoundFile = std::unique_ptr<SNDFILE, Closer>;
 
-constexpr std::size_t kBlock = 65536;  // frames read or written at a time
+constexpr std::size_t kBlock = 8192;  // frames read or written at a time
 
 }  // namespace
 
@@ -38,27 +38,38 @@ std::vector<Waveform> read_audio(const std::filesystem::path& file) {
                     sf_strerror(nullptr)));
   }
   const auto channels = static_cast<std::size_t>(info.channels);
+  // A FLAC written into a pipe has no length; libsndfile then says the largest it knows.
+  const bool length_known = info.frames < std::numeric_limits<sf_count_t>::max();
   std::vector<Waveform> out(channels, Waveform{Hertz(info.samplerate), {}});
+  if (length_known) {
+    // A header may promise anything: no more than the file's bytes could hold uncompressed.
+    const std::uintmax_t most = std::min<std::uintmax_t>(static_cast<std::uintmax_t>(info.frames),
+                                                         std::filesystem::file_size(file));
+    for (Waveform& w : out) w.samples.reserve(most);
+  }
   std::vector<double> interleaved(kBlock * channels);
   sf_count_t total = 0;
   while (true) {
     const sf_count_t got = sf_readf_double(sound.get(), interleaved.data(), kBlock);
     if (got <= 0) break;
     for (std::size_t c = 0; c < channels; ++c) {
-      for (std::size_t n = 0; n < static_cast<std::size_t>(got); ++n) {
-        const double x = interleaved[n * channels + c];
-        if (!std::isfinite(x)) {
-          throw InputError(
-              fmt::format("{}: channel {}, frame {}: the sample is {}; expected a finite number",
-                          name, c + 1, static_cast<std::size_t>(total) + n, x));
-        }
-        out[c].samples.push_back(x);
+      const std::size_t start = out[c].samples.size(), count = static_cast<std::size_t>(got);
+      out[c].samples.resize(start + count);
+      double* samples = out[c].samples.data() + start;
+      double doubtful = 0.0;  // 0 x stays 0 for every finite number
+      for (std::size_t n = 0; n < count; ++n) {
+        samples[n] = interleaved[n * channels + c];
+        doubtful += 0.0 * samples[n];
       }
+      if (doubtful == 0.0) continue;
+      const double* bad =
+          std::find_if_not(samples, samples + count, [](double x) { return std::isfinite(x); });
+      throw InputError(
+          fmt::format("{}: channel {}, frame {}: the sample is {}; expected a finite number", name,
+                      c + 1, static_cast<std::size_t>(total + (bad - samples)), *bad));
     }
     total += got;
   }
-  // A FLAC written into a pipe has no length; libsndfile then says the largest it knows.
-  const bool length_known = info.frames < std::numeric_limits<sf_count_t>::max();
   if (length_known && total < info.frames) {
     throw InputError(
         fmt::format("{}: cut short: its header promises {} frames, {} can be read; "
