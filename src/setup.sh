@@ -6,7 +6,7 @@ set -euo pipefail
 packages=(
   g++ cmake ninja-build pkg-config clang-format
   portaudio19-dev libfftw3-dev libsndfile1-dev
-  libceres-dev libeigen3-dev libboost-dev libcairo2-dev
+  libceres-dev libeigen3-dev libboost-dev libcairo2-dev zlib1g-dev
   nlohmann-json3-dev libcli11-dev libfmt-dev doctest-dev
   fonts-dejavu-core
   # what the tests check against

@@ -32,3 +32,12 @@ foreach(script ${reference_scripts})
 endforeach()
 # A live server without realtime priority has the machine to itself.
 set_tests_properties("reference: live_server" PROPERTIES RUN_SERIAL TRUE)
+
+# Speed against two peers (tests/bench.sh). Built on demand alone: figures of time decide no test.
+add_executable(kneeprint_bench EXCLUDE_FROM_ALL tests/bench/bench.cpp)
+target_include_directories(kneeprint_bench PRIVATE ${PROJECT_SOURCE_DIR}/tests)
+target_link_libraries(kneeprint_bench PRIVATE kneeprint_method)
+target_compile_options(kneeprint_bench PRIVATE ${KNEEPRINT_WARNINGS})
+add_executable(kneeprint_bench_peer EXCLUDE_FROM_ALL tests/bench/peer.c)
+target_link_libraries(kneeprint_bench_peer PRIVATE PkgConfig::FFTW m)
+target_compile_options(kneeprint_bench_peer PRIVATE -Wall -Wextra)

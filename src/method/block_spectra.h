@@ -5,9 +5,9 @@
 
 #include <complex>
 #include <functional>
-#include <vector>
 
 #include "method/method.h"
+#include "signal/fft.h"
 
 namespace kneeprint {
 
@@ -26,12 +26,12 @@ class BlockSpectra {
   BlockSpectra(const Waveform& take, const HoldLayout& hold, std::size_t stride,
                std::size_t emptied = 0);
 
-  int blocks() const { return static_cast<int>(spectra_.size()); }
-  std::size_t bins() const { return spectra_.front().size(); }
+  int blocks() const { return blocks_; }
+  std::size_t bins() const { return bins_; }
   double bin_width() const { return bin_width_; }
   /// Peak amplitude and phase (cosine reference at the block's start) of a bin; bin 0 is the mean.
   std::complex<double> at(int block, std::size_t bin) const {
-    return spectra_[static_cast<std::size_t>(block)][bin];
+    return (bin == 0 ? 0.5 * scale_ : scale_) * block_start(block)[bin];
   }
 
   /// Mean over blocks first .. end-1 of line `bin`, block k rotated by -turn(k) radians first, so
@@ -52,7 +52,14 @@ class BlockSpectra {
   double band_power(int block, std::size_t low, std::size_t high) const;
 
  private:
-  std::vector<std::vector<std::complex<double>>> spectra_;
+  const std::complex<double>* block_start(int block) const {
+    return spectra_.get() + static_cast<std::size_t>(block) * bins_;
+  }
+
+  int blocks_ = 0;
+  std::size_t bins_ = 0;
+  SpectrumBuffer spectra_;  // block after block, as the transform leaves them
+  double scale_ = 1.0;      // to peak amplitudes; half of it for bin 0
   double bin_width_ = 0.0;
   std::size_t stride_ = 1;
   std::size_t emptied_ = 0;

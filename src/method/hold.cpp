@@ -50,16 +50,18 @@ HeldStimulus held_tones(std::span<const Tone> tones, Hertz rate, std::size_t blo
   const bool has_tail = tail_blocks > 0 && !tail_tones.empty();
 
   HeldStimulus out;
-  out.hold = held_layout(lowest_of(tones), rate, block, blocks);
+  const Hertz lowest = lowest_of(tones);
+  out.hold = held_layout(lowest, rate, block, blocks);
   const std::size_t open = margin + ramp;
   const std::size_t close = out.hold.end() + margin;
   std::size_t last_close = close;
   if (has_tail) {
-    out.tail = {close + ramp + margin, block, tail_blocks};
+    out.tail = tail_layout(lowest, rate, block, blocks, tail_blocks);
     last_close = out.tail.end() + margin;
   }
   out.wave.rate = rate;
-  out.wave.samples.assign(last_close + ramp + margin, 0.0);
+  out.wave.samples.assign(held_length(lowest, rate, block, blocks, has_tail ? tail_blocks : 0),
+                          0.0);
   for (const Tone& tone : tones) {
     const std::size_t end = has_tail && sounds_on(tone, tail_tones) ? last_close : close;
     for (std::size_t n = margin; n < end + ramp; ++n) {
@@ -89,6 +91,20 @@ HeldStimulus held_period(std::span<const double> period, Hertz lowest, Hertz rat
         period[(n + lead) % period.size()] * envelope(n, margin + ramp, close, ramp);
   }
   return out;
+}
+
+HoldLayout tail_layout(Hertz lowest, Hertz rate, std::size_t block, int blocks, int tail_blocks) {
+  const std::size_t margin = samples_in(kHoldMargin, rate);
+  const std::size_t ramp = samples_in(ramp_length(lowest), rate);
+  return {held_layout(lowest, rate, block, blocks).end() + margin + ramp + margin, block,
+          tail_blocks};
+}
+
+std::size_t held_length(Hertz lowest, Hertz rate, std::size_t block, int blocks, int tail_blocks) {
+  const std::size_t margin = samples_in(kHoldMargin, rate);
+  const HoldLayout last = tail_blocks > 0 ? tail_layout(lowest, rate, block, blocks, tail_blocks)
+                                          : held_layout(lowest, rate, block, blocks);
+  return last.end() + margin + samples_in(ramp_length(lowest), rate) + margin;
 }
 
 }  // namespace kneeprint

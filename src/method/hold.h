@@ -38,5 +38,10 @@ HeldStimulus held_tones(std::span<const Tone> tones, Hertz rate, std::size_t blo
 HoldLayout held_layout(Hertz lowest, Hertz rate, std::size_t block, int blocks);
 /// One block repeated under the same silence, rise and fall; `lowest` tone of it sets the ramps.
 HeldStimulus held_period(std::span<const double> period, Hertz lowest, Hertz rate, int blocks);
+/// The same for the blocks of a tail.
+HoldLayout tail_layout(Hertz lowest, Hertz rate, std::size_t block, int blocks, int tail_blocks);
+/// Samples of the whole stimulus.
+std::size_t held_length(Hertz lowest, Hertz rate, std::size_t block, int blocks,
+                        int tail_blocks = 0);
 
 }  // namespace kneeprint

@@ -143,6 +143,8 @@ struct Method {
   std::vector<PredictedProduct> (*predict)(const TwoToneCurve&, const StepOptions&, double peak);
   /// Throws InputError when the method cannot be played so at this rate; nullptr: no such limit.
   void (*check)(const StepOptions&, Hertz rate) = nullptr;
+  /// Samples of the stimulus, where that is known without making it; nullptr: it has to be made.
+  std::size_t (*length)(const TakeSpec&, Hertz rate) = nullptr;
 };
 
 std::span<const Method> methods();

@@ -61,9 +61,19 @@ RelativeReading root_sum_of(std::span<const RelativeReading> parts) {
 
 bool reaches_full_scale(const Waveform& take, const HoldLayout& hold) {
   constexpr double kEnd = 0.9999;
-  const auto begin = take.samples.begin() + static_cast<long>(hold.first_block);
-  return std::any_of(begin, begin + static_cast<long>(hold.end() - hold.first_block),
-                     [](double x) { return std::abs(x) >= kEnd; });
+  // Peaks side by side and no early exit, so that the loop runs on vectors: a clipped take is the
+  // exception.
+  constexpr std::size_t kLanes = 8;
+  std::array<double, kLanes> peaks{};
+  std::size_t n = hold.first_block;
+  for (; n + kLanes <= hold.end(); n += kLanes) {
+    for (std::size_t i = 0; i < kLanes; ++i) {
+      const double x = std::abs(take.samples[n + i]);
+      peaks[i] = x > peaks[i] ? x : peaks[i];
+    }
+  }
+  for (; n < hold.end(); ++n) peaks[0] = std::max(peaks[0], std::abs(take.samples[n]));
+  return *std::max_element(peaks.begin(), peaks.end()) >= kEnd;
 }
 
 Settled judge_settling(const BlockSpectra& spectra, std::span<const std::size_t> bins,

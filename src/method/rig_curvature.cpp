@@ -13,12 +13,16 @@ std::vector<double> curvature_floor(std::span<const std::complex<double>> harmon
   // The cube of orders up to N reaches 3 N: 8 (N + 1) points per period keep it free of aliases.
   const std::size_t size = 8 * harmonics.size();
   std::vector<double> square(size), cube(size);
+  std::vector<std::complex<double>> circle(size);
+  for (std::size_t k = 0; k < size; ++k) {
+    circle[k] = std::polar(
+        1.0, 2.0 * std::numbers::pi * static_cast<double>(k) / static_cast<double>(size));
+  }
   for (std::size_t k = 0; k < size; ++k) {
     double y = harmonics[0].real();
     for (std::size_t n = 1; n < harmonics.size(); ++n) {
-      const double theta =
-          2.0 * std::numbers::pi * static_cast<double>(n * k % size) / static_cast<double>(size);
-      y += harmonics[n].real() * std::cos(theta) - harmonics[n].imag() * std::sin(theta);
+      const std::complex<double>& turn = circle[n * k % size];
+      y += harmonics[n].real() * turn.real() - harmonics[n].imag() * turn.imag();
     }
     square[k] = y * y;
     cube[k] = y * y * y;

@@ -29,8 +29,8 @@ Remaining remaining_change(const BlockTrend& trend, int from, int first, Seconds
     const double tau = shortest * std::pow(top / shortest, g / (kGrid - 1.0));
     const double q = std::exp(-block.value() / tau);
     double n = 0, s = 0, ss = 0, y = 0, sy = 0;
-    for (int k = from; k < count; ++k) {
-      const double e = std::pow(q, k - from);
+    double e = 1.0;  // q^(k - from)
+    for (int k = from; k < count; ++k, e *= q) {
       n += 1, s += e, ss += e * e, y += trend.decibels[k], sy += e * trend.decibels[k];
     }
     const double det = n * ss - s * s;
@@ -38,8 +38,8 @@ Remaining remaining_change(const BlockTrend& trend, int from, int first, Seconds
     const double b = (n * sy - s * y) / det;
     const double a = (y - b * s) / n;
     double residual = 0, kept = 0;
-    for (int k = from; k < count; ++k) {
-      const double e = std::pow(q, k - from);
+    e = 1.0;
+    for (int k = from; k < count; ++k, e *= q) {
       const double r = trend.decibels[k] - a - b * e;
       residual += r * r;
       if (k >= first) kept += e / (count - first);

@@ -39,6 +39,15 @@ Stimulus stimulus(const TakeSpec& spec, Hertz rate) {
   return {std::move(held.wave), held.hold, tone.frequency};
 }
 
+HoldLayout layout_of(const CoherentTone& tone, const TakeSpec& spec, Hertz rate) {
+  return held_layout(tone.frequency, rate, tone.block, spec.hold_blocks);
+}
+
+std::size_t length(const TakeSpec& spec, Hertz rate) {
+  const CoherentTone tone = tone_of(spec, rate);
+  return held_length(tone.frequency, rate, tone.block, spec.hold_blocks);
+}
+
 double wrapped_degrees(double radians) {
   return std::remainder(radians, 2.0 * std::numbers::pi) * kDegrees;
 }
@@ -128,9 +137,13 @@ class SteadyReading {
         rig_(rig),
         rate_(take.response.rate),
         tone_(tone_of(spec, rate_)),
-        layout_(stimulus(spec, rate_).hold),
+        layout_(layout_of(tone_, spec, rate_)),
         steadied_(in_stimulus_time(take.response, layout_, std::array{tone_.cycles}, rig)),
-        spectra_(steadied_.or_else(take.response), layout_, tone_.cycles, steadied_.emptied) {}
+        spectra_(steadied_.or_else(take.response), layout_, tone_.cycles, steadied_.emptied) {
+    for (int b = 0; b < spectra_.blocks(); ++b) {
+      turns_.push_back(std::arg(spectra_.at(b, tone_.cycles)));
+    }
+  }
 
   TakeVerdict read(Curves& out);
 
@@ -145,7 +158,7 @@ class SteadyReading {
   void place(HarmonicPoint& point, const RelativeReading& reading, const Line& line) const;
 
   std::size_t bin(int order) const { return tone_.cycles * static_cast<std::size_t>(order); }
-  double turn(int block) const { return std::arg(spectra_.at(block, tone_.cycles)); }
+  double turn(int block) const { return turns_[static_cast<std::size_t>(block)]; }
   double transfer_phase() const {
     return turn(first_) - std::arg(rig_.response.loop(tone_.frequency)) +
            2.0 * std::numbers::pi * tone_.frequency.value() * take_.delay / rate_.value();
@@ -155,7 +168,7 @@ class SteadyReading {
   }
   /// As it left the unit: the return's share of the rig's response is taken out. The blocks are
   /// turned by the fundamental as recorded, so that its own turn within the return is given back.
-  Line line(int order) const {
+  Line read_line(int order) const {
     Line l = spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
     const std::complex<double> own = rig_.response.ret(tone_.frequency).response;
     const std::complex<double> share =
@@ -167,6 +180,13 @@ class SteadyReading {
   LoopResponse::Share ret_ratio(int order) const {
     return rig_.response.ret_ratio(order * tone_.frequency, tone_.frequency);
   }
+  void read_lines() {
+    lines_.push_back(spectra_.mean(0, first_, [](int) { return 0.0; }));
+    for (int n = 1; n <= spec_.settings.orders; ++n) {
+      lines_.push_back(in_reach(n) ? read_line(n) : Line{});
+    }
+  }
+  const Line& line(int order) const { return lines_[static_cast<std::size_t>(order)]; }
 
   const TakeSpec& spec_;
   const TakeData& take_;
@@ -176,6 +196,8 @@ class SteadyReading {
   HoldLayout layout_;
   SteadiedTake steadied_;
   BlockSpectra spectra_;
+  std::vector<double> turns_;  // of the fundamental, by block
+  std::vector<Line> lines_;    // by order, the mean first; those in reach
   int first_ = 0;
   Flag take_flag_ = Flag::none;
   Line fundamental_;
@@ -231,11 +253,8 @@ void SteadyReading::read_floor() {
     return rig_.floor.at(spec_.send, return_level_, n, tone_.frequency);
   };
   if (!loop(2) || !loop(3)) return;
-  std::vector<std::complex<double>> harmonics{
-      spectra_.mean(0, first_, [](int) { return 0.0; }).mean};
-  for (int n = 1; n <= spec_.settings.orders; ++n) {
-    harmonics.push_back(in_reach(n) ? line(n).mean : 0.0);
-  }
+  std::vector<std::complex<double>> harmonics;
+  for (const Line& l : lines_) harmonics.push_back(l.mean);
   for (auto& h : harmonics) h /= std::abs(fundamental_.mean);
   floor_ = curvature_floor(harmonics, *loop(2), *loop(3));
   for (std::size_t n = 4; n < floor_.size(); ++n) {
@@ -299,7 +318,7 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       const std::array flags{take_flag_, Flag::alias};
       point.flag = response.flag = gravest(flags);
     } else {
-      const Line l = line(n);
+      const Line& l = line(n);
       const double floor = floor_.empty() ? 0.0 : floor_[static_cast<std::size_t>(n)];
       RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
       const std::array doubts{
@@ -392,7 +411,7 @@ void SteadyReading::read_residual(LevelPoint& level) {
 
 void SteadyReading::read_dc(LevelPoint& level) {
   if (!rig_.sees_dc) return;
-  const Line dc = spectra_.mean(0, first_, [](int) { return 0.0; });
+  const Line& dc = line(0);
   level.dc = dc.mean.real() * rig_.ret.peak_per_full_scale;
   // The mean has one component, not two: its own scatter is sqrt 2 of what a line's component
   // shows.
@@ -431,6 +450,7 @@ TakeVerdict SteadyReading::read(Curves& out) {
     out.levels.push_back(level);
     return verdict;
   }
+  read_lines();
   read_fundamental(level);
   if (std::abs(fundamental_.mean) < kLeastOverNoise * fundamental_.u) {
     level.flag = Flag::noise;
@@ -471,7 +491,9 @@ Method steady_sine() {
           block_length,
           stimulus,
           read,
-          nullptr};
+          nullptr,
+          nullptr,
+          length};
 }
 
 }  // namespace kneeprint

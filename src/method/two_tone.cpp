@@ -30,6 +30,16 @@ CoherentPair coherent(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
   return coherent_pair(pair.f1, pair.f2, rate, spec.settings.block);
 }
 
+HoldLayout hold_of(const CoherentPair& played, const TakeSpec& spec, Hertz rate) {
+  return held_layout(played.f1, rate, played.block, spec.hold_blocks);
+}
+
+HoldLayout tail_of(const TonePair& pair, const CoherentPair& played, const TakeSpec& spec,
+                   Hertz rate) {
+  if (!pair.f2_alone) return {};
+  return tail_layout(played.f1, rate, played.block, spec.hold_blocks, kTailBlocks);
+}
+
 HeldStimulus held(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
   const CoherentPair played = coherent(pair, spec, rate);
   const double peak = sine_peak(spec.send);
@@ -75,9 +85,16 @@ int two_tone_first_hold_blocks(const TonePair& pair, const TakeSpec& spec, Hertz
   return kept_blocks(spec.settings, two_tone_block_length(pair, spec, rate)) + 1;
 }
 
+std::size_t two_tone_length(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
+  const CoherentPair played = coherent(pair, spec, rate);
+  return held_length(played.f1, rate, played.block, spec.hold_blocks,
+                     pair.f2_alone ? kTailBlocks : 0);
+}
+
 Stimulus two_tone_stimulus(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
   HeldStimulus h = held(pair, spec, rate);
-  return {std::move(h.wave), h.hold, pair.f1};
+  const std::size_t read = h.hold.block * static_cast<std::size_t>(h.hold.blocks + h.tail.blocks);
+  return {std::move(h.wave), h.hold, pair.f1, read};
 }
 
 void check_pair(const TonePair& pair, Hertz rate) {
@@ -98,28 +115,29 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
       send_(spec.send),
       rate_(take.response.rate),
       tones_(coherent(pair, spec, rate_)),
-      held_(held(pair, spec, rate_)),
-      steadied_(in_stimulus_time(take.response, held_.hold,
-                                 std::array{tones_.cycles1, tones_.cycles2}, rig)),
-      spectra_(steadied_.or_else(take.response), held_.hold,
-               std::gcd(tones_.cycles1, tones_.cycles2), steadied_.emptied),
+      hold_(hold_of(tones_, spec, rate_)),
+      tail_(tail_of(pair, tones_, spec, rate_)),
+      steadied_(
+          in_stimulus_time(take.response, hold_, std::array{tones_.cycles1, tones_.cycles2}, rig)),
+      spectra_(steadied_.or_else(take.response), hold_, std::gcd(tones_.cycles1, tones_.cycles2),
+               steadied_.emptied),
       products_(products_to_order(kHighestOrder, tones_.cycles1, tones_.cycles2)) {
-  if (held_.tail.blocks > 0) {
+  if (tail_.blocks > 0) {
     const SteadiedTake alone =
-        in_stimulus_time(take.response, held_.tail, std::array{tones_.cycles2}, rig);
-    alone_spectra_.emplace(alone.or_else(take.response), held_.tail,
+        in_stimulus_time(take.response, tail_, std::array{tones_.cycles2}, rig);
+    alone_spectra_.emplace(alone.or_else(take.response), tail_,
                            std::gcd(tones_.cycles1, tones_.cycles2));
   }
   std::vector<std::size_t> watched;
   for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
     if (in_reach(p)) watched.push_back(bin(p));
   }
-  const Settled settled =
-      judge_settling(spectra_, watched, spec.settings,
-                     Seconds(static_cast<double>(held_.hold.block) / rate_.value()));
+  const Settled settled = judge_settling(spectra_, watched, spec.settings,
+                                         Seconds(static_cast<double>(hold_.block) / rate_.value()));
   first_ = settled.first;
   verdict_.settled = settled.settled;
-  verdict_.clipped = reaches_full_scale(take.response, held_.hold);
+  verdict_.settling = first_ * Seconds(static_cast<double>(hold_.block) / rate_.value());
+  verdict_.clipped = reaches_full_scale(take.response, hold_);
   if (!settled.settled) take_flag_ = Flag::unsteady;
   if (verdict_.clipped) take_flag_ = Flag::clipped;
 
@@ -141,8 +159,7 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
                       pair.share2() * std::abs(rig.response.send(tones_.f2).response);
   drive_ = rig.send.level_of(spec.send) + Decibels::of_ratio(sent).value();
   if (take.reference != nullptr) {
-    const BlockSpectra reference(*take.reference, held_.hold,
-                                 std::gcd(tones_.cycles1, tones_.cycles2));
+    const BlockSpectra reference(*take.reference, hold_, std::gcd(tones_.cycles1, tones_.cycles2));
     double peak = 0.0;
     for (const auto& [cycles, f] :
          {std::pair(tones_.cycles1, tones_.f1), std::pair(tones_.cycles2, tones_.f2)}) {
@@ -235,7 +252,7 @@ IntermodPoint TwoToneReading::blank(const std::string& name) const {
   p.unit = rig_.ret.unit;
   p.product = name;
   p.blocks = spectra_.blocks() - first_;
-  p.settled_after_s = first_ * static_cast<double>(held_.hold.block) / rate_.value();
+  p.settled_after_s = first_ * static_cast<double>(hold_.block) / rate_.value();
   return p;
 }
 

@@ -42,6 +42,7 @@ TonePair with_options(TonePair pair, const StepOptions& options);
 
 int two_tone_first_hold_blocks(const TonePair& pair, const TakeSpec& spec, Hertz rate);
 Seconds two_tone_block_length(const TonePair& pair, const TakeSpec& spec, Hertz rate);
+std::size_t two_tone_length(const TonePair& pair, const TakeSpec& spec, Hertz rate);
 Stimulus two_tone_stimulus(const TonePair& pair, const TakeSpec& spec, Hertz rate);
 /// Throws InputError: the upper tone is past what a converter at this rate passes, or no block
 /// holds whole cycles of both.
@@ -70,7 +71,8 @@ Method two_tone_method(std::string_view title, std::string_view source, MethodNe
       [](const TwoToneCurve& curve, const StepOptions& o, double peak) {
         return predict(pair_of(o), curve, peak);
       },
-      [](const StepOptions& o, Hertz r) { check_pair(pair_of(o), r); }};
+      [](const StepOptions& o, Hertz r) { check_pair(pair_of(o), r); },
+      [](const TakeSpec& s, Hertz r) { return two_tone_length(pair_of(s.options), s, r); }};
 }
 
 class TwoToneReading {
@@ -135,7 +137,7 @@ class TwoToneReading {
   LevelDbfs send_;
   Hertz rate_;
   CoherentPair tones_;
-  HeldStimulus held_;
+  HoldLayout hold_, tail_;
   SteadiedTake steadied_;
   BlockSpectra spectra_;
   std::optional<BlockSpectra> alone_spectra_;

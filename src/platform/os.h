@@ -34,6 +34,10 @@ class QuietStderr {
 void catch_interrupts();
 bool interrupted();
 
+/// What is freed stays with the process (up to 256 MiB) instead of going back to the system: arrays
+/// that are made anew for every take would cost more to be given than to be filled.
+void keep_freed_memory();
+
 std::string utc_now();  ///< ISO 8601, seconds
 
 }  // namespace kneeprint::os

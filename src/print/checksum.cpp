@@ -2,15 +2,14 @@
 #include "print/checksum.h"
 
 #include <fmt/format.h>
-
-#include <boost/crc.hpp>
+#include <zlib.h>
 
 namespace kneeprint {
 
 std::string crc32_hex(std::string_view bytes) {
-  boost::crc_32_type crc;
-  crc.process_bytes(bytes.data(), bytes.size());
-  return fmt::format("{:08x}", crc.checksum());
+  const uLong crc =
+      crc32_z(0, reinterpret_cast<const Bytef*>(bytes.data()), static_cast<z_size_t>(bytes.size()));
+  return fmt::format("{:08x}", crc);
 }
 
 }  // namespace kneeprint

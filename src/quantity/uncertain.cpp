@@ -4,12 +4,24 @@
 #include <boost/math/distributions/students_t.hpp>
 #include <cmath>
 
+#include "quantity/chebyshev.h"
+
 namespace kneeprint {
 
 double coverage_factor_95(double dof) {
   constexpr double kNormalQuantile = 1.959963984540054;  // limit for infinite dof
+  constexpr double kFewest = 2.0;
+  const auto exact = [](double nu) {
+    return boost::math::quantile(boost::math::students_t(nu), 0.975);
+  };
   if (!(dof < 1e9)) return kNormalQuantile;
-  return boost::math::quantile(boost::math::students_t(dof), 0.975);
+  if (dof < kFewest) return exact(dof);
+  // The quantile is smooth in 1 / dof down to the normal distribution at 0; 28 points hold it to
+  // the last bits (tests/quantity/uncertain_test.cpp).
+  static const ChebyshevCurve curve(
+      [&](double x) { return x > 1e-9 ? exact(1.0 / x) : kNormalQuantile; }, 0.0, 1.0 / kFewest,
+      28);
+  return curve(1.0 / dof);
 }
 
 double expanded_95(const Uncertain& x) { return coverage_factor_95(x.dof) * x.u; }

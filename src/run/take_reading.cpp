@@ -8,7 +8,9 @@
 #include "curve/hysteresis.h"
 #include "curve/stability.h"
 #include "curve/upright.h"
+#include "platform/os.h"
 #include "quantity/failure.h"
+#include "run/in_order.h"
 
 namespace kneeprint {
 
@@ -27,12 +29,16 @@ TakeSpec spec_of(const JournalTake& take, const Plan& plan, const Rig& rig) {
   return *spec;
 }
 
-TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
-                      const Rig& rig, Curves& out) {
+namespace {
+
+TakeVerdict read_seen(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
+                      const Rig& rig, const RigView& view, Curves& out) {
   const TakeSpec spec = spec_of(take, plan, rig);
   const Method& method = *find_method(spec.method);
   const std::vector<Waveform> channels = folder.load_take(take);
-  const std::size_t expected = method.stimulus(spec, rig.rate).wave.samples.size();
+  const std::size_t expected = method.length != nullptr
+                                   ? method.length(spec, rig.rate)
+                                   : method.stimulus(spec, rig.rate).wave.samples.size();
   for (const Waveform& channel : channels) {
     if (channel.samples.size() != expected || channel.rate != rig.rate) {
       throw InputError(fmt::format("{}: {} frames at {} Hz, expected {} at {} Hz", take.file,
@@ -42,15 +48,33 @@ TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const 
   }
   const TakeData data{channels.front(), channels.size() > 1 ? &channels[1] : nullptr,
                       take.delay_samples};
-  return method.read(spec, data, view_of(rig), out);
+  return method.read(spec, data, view, out);
+}
+
+}  // namespace
+
+TakeVerdict read_take(const PrintFolder& folder, const JournalTake& take, const Plan& plan,
+                      const Rig& rig, Curves& out) {
+  return read_seen(folder, take, plan, rig, view_of(rig), out);
 }
 
 Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan& plan,
                   const Rig& rig) {
-  Curves curves;
+  std::vector<const JournalTake*> takes;
   for (const JournalTake& take : journal.takes) {
-    if (take.rung >= 0) read_take(folder, take, plan, rig, curves);
+    if (take.rung >= 0) takes.push_back(&take);
   }
+  os::keep_freed_memory();
+  const RigView view = view_of(rig);
+  Curves curves;
+  // A worker holds one take at a time: it is loaded, read and dropped.
+  const auto read = [&](std::size_t i) {
+    Curves of_take;
+    read_seen(folder, *takes[i], plan, rig, view, of_take);
+    return of_take;
+  };
+  in_order(takes.size(), workers_for(takes.size()), read,
+           [&](Curves&& of_take) { curves.append(std::move(of_take)); });
   if (curves.empty()) {
     throw NothingUsable(fmt::format(
         "{}: no take of the ladder was kept, so there is nothing to read", folder.path().string()));

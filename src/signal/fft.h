@@ -4,6 +4,7 @@
 
 #include <complex>
 #include <cstddef>
+#include <memory>
 #include <span>
 #include <vector>
 
@@ -13,6 +14,17 @@ namespace kneeprint {
 /// Thread-safe; the plan of each length is made on first use (FFTW_ESTIMATE: bit-repeatable) and
 /// reused.
 std::vector<std::complex<double>> forward_fft(std::span<const double> x);
+
+struct FftFree {
+  void operator()(std::complex<double>* p) const;
+};
+/// Room for spectra, aligned as FFTW likes it and not cleared: a take's worth costs as much to
+/// clear as a tenth of its transform.
+using SpectrumBuffer = std::unique_ptr<std::complex<double>[], FftFree>;
+SpectrumBuffer spectrum_buffer(std::size_t size);
+
+/// The same transform, the same bits, into x.size() / 2 + 1 values at `spectrum`.
+void forward_fft(std::span<const double> x, std::complex<double>* spectrum);
 
 /// The inverse, divided by N. `spectrum` has size/2 + 1 values.
 std::vector<double> inverse_fft(std::span<const std::complex<double>> spectrum, std::size_t size);

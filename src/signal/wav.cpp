@@ -22,7 +22,43 @@ struct Closer {
 };
 using SoundFile = std::unique_ptr<SNDFILE, Closer>;
 
-constexpr std::size_t kBlock = 65536;  // frames read or written at a time
+constexpr std::size_t kBlock = 16384;  // frames read or written at a time
+
+sf_count_t read_frames(SNDFILE* sound, float* to, std::size_t frames) {
+  return sf_readf_float(sound, to, static_cast<sf_count_t>(frames));
+}
+sf_count_t read_frames(SNDFILE* sound, double* to, std::size_t frames) {
+  return sf_readf_double(sound, to, static_cast<sf_count_t>(frames));
+}
+
+// Appends every frame that can be read to `out`, one waveform per channel; returns their number.
+template <class Sample>
+sf_count_t append_all(SNDFILE* sound, const std::string& name, std::vector<Waveform>& out) {
+  std::vector<Sample> interleaved(kBlock * out.size());
+  sf_count_t total = 0;
+  for (sf_count_t got = 0; (got = read_frames(sound, interleaved.data(), kBlock)) > 0;) {
+    const auto count = static_cast<std::size_t>(got);
+    for (std::size_t c = 0; c < out.size(); ++c) {
+      std::vector<double>& samples = out[c].samples;
+      const std::size_t start = samples.size();
+      samples.resize(start + count);
+      double doubtful = 0.0;  // 0 x stays 0 for every finite number
+      for (std::size_t n = 0; n < count; ++n) {
+        const double x = interleaved[n * out.size() + c];
+        samples[start + n] = x;
+        doubtful += 0.0 * x;
+      }
+      if (doubtful == 0.0) continue;
+      const auto bad = std::find_if_not(samples.begin() + static_cast<long>(start), samples.end(),
+                                        [](double x) { return std::isfinite(x); });
+      throw InputError(
+          fmt::format("{}: channel {}, frame {}: the sample is {}; expected a finite number", name,
+                      c + 1, bad - samples.begin(), *bad));
+    }
+    total += got;
+  }
+  return total;
+}
 
 }  // namespace
 
@@ -38,27 +74,21 @@ std::vector<Waveform> read_audio(const std::filesystem::path& file) {
                     sf_strerror(nullptr)));
   }
   const auto channels = static_cast<std::size_t>(info.channels);
-  std::vector<Waveform> out(channels, Waveform{Hertz(info.samplerate), {}});
-  std::vector<double> interleaved(kBlock * channels);
-  sf_count_t total = 0;
-  while (true) {
-    const sf_count_t got = sf_readf_double(sound.get(), interleaved.data(), kBlock);
-    if (got <= 0) break;
-    for (std::size_t c = 0; c < channels; ++c) {
-      for (std::size_t n = 0; n < static_cast<std::size_t>(got); ++n) {
-        const double x = interleaved[n * channels + c];
-        if (!std::isfinite(x)) {
-          throw InputError(
-              fmt::format("{}: channel {}, frame {}: the sample is {}; expected a finite number",
-                          name, c + 1, static_cast<std::size_t>(total) + n, x));
-        }
-        out[c].samples.push_back(x);
-      }
-    }
-    total += got;
-  }
   // A FLAC written into a pipe has no length; libsndfile then says the largest it knows.
   const bool length_known = info.frames < std::numeric_limits<sf_count_t>::max();
+  std::vector<Waveform> out(channels, Waveform{Hertz(info.samplerate), {}});
+  std::error_code no_size;
+  const std::uintmax_t bytes = std::filesystem::file_size(file, no_size);
+  if (length_known && !no_size) {
+    // A header may promise anything: no more than the file's bytes could hold uncompressed.
+    const auto frames = std::min(static_cast<std::uintmax_t>(info.frames), bytes);
+    for (Waveform& w : out) w.samples.reserve(frames);
+  }
+  // libsndfile hands 32-bit floats, as takes hold them, over in one go; the rest it scales to
+  // doubles piece by piece.
+  const bool floats = (info.format & SF_FORMAT_SUBMASK) == SF_FORMAT_FLOAT;
+  const sf_count_t total = floats ? append_all<float>(sound.get(), name, out)
+                                  : append_all<double>(sound.get(), name, out);
   if (length_known && total < info.frames) {
     throw InputError(
         fmt::format("{}: cut short: its header promises {} frames, {} can be read; "

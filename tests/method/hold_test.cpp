@@ -53,3 +53,21 @@ TEST_CASE("the start is smooth: no step larger than the tone's own slope") {
   const double slope = 2.0 * std::numbers::pi * 4993.0 / 48000.0;
   for (std::size_t n = 1; n < x.size(); ++n) CHECK(std::abs(x[n] - x[n - 1]) <= 1.05 * slope);
 }
+
+TEST_CASE("the length that a method states is that of its stimulus") {
+  int stated = 0;
+  for (const Method& m : methods()) {
+    if (m.length == nullptr) continue;
+    ++stated;
+    for (const double rate : {44100.0, 96000.0}) {
+      for (const int blocks : {3, 7}) {
+        CAPTURE(m.id);
+        TakeSpec spec = spec_for(std::string(m.id), m.needs.frequencies ? 41.0 : 0.0, -12.0);
+        if (m.needs.tones_required) spec.options.tones = {Hertz(250.0), Hertz(8000.0)};
+        spec.hold_blocks = blocks;
+        CHECK(m.length(spec, Hertz(rate)) == m.stimulus(spec, Hertz(rate)).wave.samples.size());
+      }
+    }
+  }
+  CHECK(stated >= 3);
+}

@@ -3,7 +3,9 @@
 
 #include <doctest/doctest.h>
 
+#include <algorithm>
 #include <array>
+#include <boost/math/distributions/students_t.hpp>
 #include <cmath>
 
 namespace kneeprint {
@@ -26,6 +28,15 @@ TEST_CASE("coverage factors are the 0.975 quantiles of Student's t") {
   // Effective degrees of freedom are seldom whole.
   CHECK(coverage_factor_95(15.5) < coverage_factor_95(15.0));
   CHECK(coverage_factor_95(15.5) > coverage_factor_95(16.0));
+}
+
+TEST_CASE("coverage factors at any degrees of freedom are Boost's quantiles to 1e-13") {
+  double worst = 0.0;
+  for (double dof = 1.0; dof < 1e9; dof *= 1.013) {
+    const double exact = boost::math::quantile(boost::math::students_t(dof), 0.975);
+    worst = std::max(worst, std::abs(coverage_factor_95(dof) / exact - 1.0));
+  }
+  CHECK(worst < 1e-13);
 }
 
 TEST_CASE("the expanded uncertainty is the factor times u") {

@@ -60,6 +60,22 @@ TEST_CASE("the inverse gives the signal back, and leaves the spectrum alone") {
   }
 }
 
+TEST_CASE("the bits do not depend on where the samples and the spectrum stand in memory") {
+  const std::vector<double> x = noise(480, 4);
+  const auto expected = forward_fft(x);
+  for (const std::size_t shift : {0, 1, 2, 3, 5}) {
+    CAPTURE(shift);
+    std::vector<double> moved(x.size() + shift);
+    std::copy(x.begin(), x.end(), moved.begin() + static_cast<long>(shift));
+    const std::span<const double> here(moved.data() + shift, x.size());
+    CHECK(forward_fft(here) == expected);
+    const SpectrumBuffer out = spectrum_buffer(expected.size() + shift);
+    forward_fft(here, out.get() + shift);
+    CHECK(std::equal(expected.begin(), expected.end(), out.get() + shift));
+    CHECK(std::equal(x.begin(), x.end(), here.begin()));  // the input is left as it is
+  }
+}
+
 TEST_CASE("threads that meet new lengths at once get the same bits as one alone") {
   const std::vector<std::size_t> sizes{1234, 777, 2048, 1500, 999, 1235, 778, 2049};
   std::vector<std::vector<std::complex<double>>> together(sizes.size());

@@ -1,0 +1,146 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// The peer in plain C: one planned FFTW transform per take, then the figures by hand. No
+// uncertainties, no floor, no settling, no checks.
+//   peer plan DIR WORKLOAD WISDOM        measures the plan and stores it
+//   peer time DIR WORKLOAD TIMES [WISDOM]  prints seconds for all takes; without WISDOM estimated
+#define _GNU_SOURCE
+#include <complex.h>  // before fftw3.h: fftw_complex is then C's own
+
+#include <fftw3.h>
+#include <math.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <time.h>
+
+#include "takes.h"
+
+enum { ORDERS = 10, PRODUCT_ORDER = 5 };
+static const double kLow = 20.0, kHigh = 20000.0, kReach = 0.45;
+
+typedef struct {
+  TakesHeader h;
+  double* samples;
+} Takes;
+
+// What a take is read into; summed up so that no compiler can leave the work out.
+typedef struct {
+  double complex line[64];
+  int lines;
+  double thd, thdn;
+} Figures;
+
+// Time of the processor spent here: other programs on the machine do not count.
+static double now(void) {
+  struct timespec t;
+  clock_gettime(CLOCK_PROCESS_CPUTIME_ID, &t);
+  return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
+}
+
+static void fail(const char* what) {
+  fprintf(stderr, "peer: %s\n", what);
+  exit(1);
+}
+
+static Takes load(const char* folder, const char* workload) {
+  char name[4096];
+  Takes t;
+  snprintf(name, sizeof name, "%s/%s.takes", folder, workload);
+  FILE* file = fopen(name, "rb");
+  if (!file || fread(&t.h, sizeof t.h, 1, file) != 1) fail("no takes; run `bench make` first");
+  const size_t count = (size_t)(t.h.takes * t.h.frames);
+  t.samples = malloc(count * sizeof(double));
+  if (fseek(file, (long)((size_t)t.h.takes * sizeof(double)), SEEK_CUR) != 0) fail("cut short");
+  if (fread(t.samples, sizeof(double), count, file) != count) fail("cut short");
+  fclose(file);
+  return t;
+}
+
+static double power(fftw_complex z) { return creal(z) * creal(z) + cimag(z) * cimag(z); }
+
+// Harmonics 1 .. 10 as phasors against the fundamental's phase, THD_F, THD+N from 20 Hz to 20 kHz.
+static void read_steady(const TakesHeader* h, fftw_complex* spectrum, Figures* f) {
+  const long c = (long)h->cycles1;
+  const double width = (double)h->rate / (double)h->hold, scale = 2.0 / (double)h->hold;
+  const double turn = carg(spectrum[c]);
+  double harmonics = 0.0;
+  f->lines = 0;
+  for (int n = 1; n <= ORDERS && n * c < kReach * (double)h->hold; ++n) {
+    f->line[f->lines++] = scale * spectrum[n * c] * cexp(-I * n * turn);
+    if (n > 1 && n * (double)c * width < kHigh) harmonics += power(spectrum[n * c]);
+  }
+  f->thd = sqrt(harmonics / power(spectrum[c]));
+  const long low = (long)ceil(kLow / width), high = (long)floor(kHigh / width);
+  double rest = 0.0;
+  for (long k = low; k < c; ++k) rest += power(spectrum[k]);
+  for (long k = c + 1; k <= high; ++k) rest += power(spectrum[k]);
+  f->thdn = sqrt(rest / (rest + power(spectrum[c])));
+}
+
+// Every product k1 f1 + k2 f2 up to order 5 that the rate can show, as phasors against both tones.
+static void read_two_tone(const TakesHeader* h, fftw_complex* spectrum, Figures* f) {
+  const long c1 = (long)h->cycles1, c2 = (long)h->cycles2;
+  const double scale = 2.0 / (double)h->hold;
+  const double turn1 = carg(spectrum[c1]), turn2 = carg(spectrum[c2]);
+  f->lines = 0;
+  for (int k1 = -PRODUCT_ORDER; k1 <= PRODUCT_ORDER; ++k1) {
+    for (int k2 = -PRODUCT_ORDER; k2 <= PRODUCT_ORDER; ++k2) {
+      const long bin = k1 * c1 + k2 * c2;
+      if (abs(k1) + abs(k2) > PRODUCT_ORDER || bin <= 0) continue;
+      if ((double)bin > kReach * (double)h->hold) continue;
+      f->line[f->lines++] = scale * spectrum[bin] * cexp(-I * (k1 * turn1 + k2 * turn2));
+    }
+  }
+  const double u1 = cabs(spectrum[c1]), u2 = cabs(spectrum[c2]);
+  const double side = cabs(spectrum[c2 - c1]);
+  if (c2 > 2 * c1) {  // modulation distortion, else difference-frequency distortion
+    const double second = side + cabs(spectrum[c2 + c1]);
+    const double third = cabs(spectrum[c2 - 2 * c1]) + cabs(spectrum[c2 + 2 * c1]);
+    f->thd = hypot(second, third) / u2;
+  } else {
+    const double third = cabs(spectrum[2 * c1 - c2]) + cabs(spectrum[2 * c2 - c1]);
+    f->thd = hypot(side, third) / (u1 + u2);
+  }
+}
+
+int main(int argc, char** argv) {
+  const int plans = argc == 5 && strcmp(argv[1], "plan") == 0;
+  const int times = (argc == 5 || argc == 6) && strcmp(argv[1], "time") == 0 ? atoi(argv[4]) : 0;
+  if (!plans && times < 1) fail("plan DIR WORKLOAD WISDOM | time DIR WORKLOAD TIMES [WISDOM]");
+  const Takes t = load(argv[2], argv[3]);
+  const int size = (int)t.h.hold;
+  double* in = fftw_malloc(sizeof(double) * (size_t)size);
+  fftw_complex* out = fftw_malloc(sizeof(fftw_complex) * (size_t)(size / 2 + 1));
+  if (plans) {
+    fftw_plan_dft_r2c_1d(size, in, out, FFTW_MEASURE);
+    return fftw_export_wisdom_to_filename(argv[4]) ? 0 : 1;
+  }
+  const unsigned flags = argc == 6 ? FFTW_MEASURE | FFTW_WISDOM_ONLY : FFTW_ESTIMATE;
+  if (argc == 6 && !fftw_import_wisdom_from_filename(argv[5])) fail("no wisdom there");
+
+  fftw_plan plan = NULL;
+  double sum = 0.0;
+  long figures = 0;
+  for (int r = 0; r <= times; ++r) {
+    const double begin = now();
+    if (!plan) plan = fftw_plan_dft_r2c_1d(size, in, out, flags);
+    if (!plan) fail("the wisdom is for another length");
+    figures = 0;
+    for (long k = 0; k < t.h.takes; ++k) {
+      Figures f;
+      memcpy(in, t.samples + k * t.h.frames + t.h.first, sizeof(double) * (size_t)size);
+      fftw_execute(plan);
+      if (t.h.cycles2 == 0) {
+        read_steady(&t.h, out, &f);
+      } else {
+        read_two_tone(&t.h, out, &f);
+      }
+      sum += f.thd + cabs(f.line[f.lines - 1]);
+      figures += f.lines;
+    }
+    printf("%s %.9f\n", r == 0 ? "first" : "warm", now() - begin);
+  }
+  printf("figures %ld\n", figures);
+  fprintf(stderr, "%s", sum == sum ? "" : "not a number\n");
+  return 0;
+}
