@@ -19,8 +19,10 @@ void add_ingest(CLI::App& app, ExitCode& code);
 void add_analyse(CLI::App& app, ExitCode& code);
 void add_fit(CLI::App& app, ExitCode& code);
 void add_report(CLI::App& app, ExitCode& code);
+void add_calibrate(CLI::App& app, ExitCode& code);
 
-inline constexpr std::array<AddCommand, 7> kCommands{
-    add_devices, add_measure, add_reel, add_ingest, add_analyse, add_fit, add_report};
+inline constexpr std::array<AddCommand, 8> kCommands{add_devices, add_measure,  add_reel,
+                                                     add_ingest,  add_analyse,  add_fit,
+                                                     add_report,  add_calibrate};
 
 }  // namespace kneeprint::cli

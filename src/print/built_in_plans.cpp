@@ -4,6 +4,9 @@
 #include <fmt/format.h>
 
 #include <filesystem>
+#include <string>
+#include <utility>
+#include <vector>
 
 #include "platform/json_fields.h"
 #include "platform/read_text.h"
@@ -17,6 +20,11 @@ LadderPlan ladder_dbfs(double from, double step_db) {
   return {{from, PlanUnit::dbfs}, {0.0, PlanUnit::dbfs}, Decibels(step_db)};
 }
 
+/// `every`: at every so many-th rung, counted from the lowest.
+StepPlan step(const std::string& method, std::vector<Hertz> frequencies = {}, int every = 1) {
+  return {method, std::move(frequencies), every, {}};
+}
+
 /// Past these a unit only grows hotter: the curve has been seen.
 void stop_when_bent(Plan& plan) {
   plan.stop_thd_f_percent = 30.0;
@@ -28,7 +36,7 @@ Plan glance() {
   Plan plan;
   plan.name = "glance";
   plan.ladder = ladder_dbfs(-44.0, 4.0);
-  plan.steps = {{"steady", {Hertz(997.0)}}};
+  plan.steps = {step("steady", {Hertz(997.0)})};
   plan.blocks = 3;
   plan.settle_limit = Seconds(2.0);
   stop_when_bent(plan);
@@ -40,8 +48,13 @@ Plan portrait() {
   Plan plan;
   plan.name = "portrait";
   plan.ladder = ladder_dbfs(-60.0, 3.0);
-  plan.steps = {
-      {"steady", {Hertz(41.0), Hertz(997.0), Hertz(4990.0)}}, {"smpte", {}}, {"ccif", {}}};
+  plan.steps = {step("silence"),
+                step("steady", {Hertz(41.0), Hertz(997.0), Hertz(4990.0)}),
+                step("smpte"),
+                step("ccif"),
+                step("multitone", {}, 6),
+                step("sweep", {}, 6),
+                step("reference", {Hertz(997.0)}, 3)};
   plan.fit_frequency = Hertz(997.0);
   stop_when_bent(plan);
   return plan;
@@ -53,12 +66,14 @@ Plan atlas() {
   Plan plan;
   plan.name = "atlas";
   plan.ladder = ladder_dbfs(-60.0, 6.0);
-  StepPlan steady{"steady", {}};
+  StepPlan steady = step("steady");
   for (const double hz :
        {31.5, 63.5, 127.0, 253.0, 503.0, 997.0, 2005.0, 3172.0, 4990.0, 8083.0, 12575.0, 15925.0}) {
     steady.frequencies.emplace_back(hz);
   }
-  plan.steps = {steady, {"smpte", {}}, {"ccif", {}}};
+  plan.steps = {step("silence"),      steady,
+                step("smpte"),        step("ccif"),
+                step("sweep", {}, 3), step("reference", {Hertz(997.0)}, 2)};
   plan.fit_frequency = Hertz(997.0);
   stop_when_bent(plan);
   return plan;

@@ -29,12 +29,11 @@ Page report_page(const ReportData& data) {
   page.title = "Kneeprint of " + unit_name(data);
   page.subtitle = subtitle(data);
   page.created = data.journal.begin.started;
-  page.sections = {notices_section(data), setup_section(data),
-                   summary_section(data), figures_section(data),
-                   model_section(data),   holdout_section(data),
-                   levels_section(data),  holdout_points_section(data),
-                   definitions_section(), cautions_section(),
-                   glossary_section()};
+  page.sections = {notices_section(data), setup_section(data),    summary_section(data),
+                   figures_section(data), noise_section(data),    programme_section(data),
+                   memory_section(data),  model_section(data),    holdout_section(data),
+                   levels_section(data),  products_section(data), holdout_points_section(data),
+                   definitions_section(), cautions_section(),     glossary_section()};
   page.footer =
       "Tables behind this page: curves/*.csv. The fit: model.json. The takes and their checksums: "
       "journal.jsonl.";

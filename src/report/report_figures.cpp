@@ -8,6 +8,7 @@
 #include <set>
 
 #include "curve/crossing.h"
+#include "report/method_figures.h"
 #include "report/number_text.h"
 #include "report/report.h"
 #include "report/report_facts.h"
@@ -425,6 +426,7 @@ std::vector<Figure> report_figures(const ReportData& data) {
                       "both tones (IEC 60268-3)."));
   if (data.model) add(transfer_figure(data, fit_hz));
   add(balance_figure(data));
+  for (Figure& f : method_figures(data)) figures.push_back(std::move(f));
   for (Figure& f : surface_figures(data)) figures.push_back(std::move(f));
   return figures;
 }

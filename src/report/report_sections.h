@@ -15,6 +15,10 @@ Section model_section(const ReportData& data);  ///< parameters and families
 Section holdout_section(const ReportData& data);
 Section holdout_points_section(const ReportData& data);  ///< every pair of the hold-out
 Section levels_section(const ReportData& data);          ///< every rung
+Section noise_section(const ReportData& data);
+Section programme_section(const ReportData& data);  ///< multitone and fill
+Section memory_section(const ReportData& data);     ///< drift, loops, recovery
+Section products_section(const ReportData& data);   ///< of two tones, at the highest drives
 Section definitions_section();
 Section cautions_section();
 Section glossary_section();

@@ -20,7 +20,11 @@ const std::vector<MethodNeeds> kMethods{
     {.id = "smpte"},
     {.id = "ccif"},
     {.id = "pair", .tones = true, .tones_required = true, .ratio = true},
-    {.id = "slow", .duration = true, .listening = true}};
+    {.id = "slow", .duration = true, .listening = true},
+    {.id = "silence", .duration = true},
+    {.id = "multitone", .listening = true},
+    {.id = "sweep", .duration = true},
+    {.id = "reference", .frequencies = true}};
 
 json full() {
   return json::parse(R"({"format":"kneeprint-plan","version":1,"name":"mine",
@@ -153,7 +157,7 @@ TEST_CASE("a step's options are those that its method uses") {
 TEST_CASE("a refused field is named with what was found and what was expected") {
   CHECK(refusal("/steps/1/method", "foo") ==
         "plan.json: field \"steps[1].method\": unknown method \"foo\"; expected one of: steady, "
-        "smpte, ccif, pair, slow");
+        "smpte, ccif, pair, slow, silence, multitone, sweep, reference");
   CHECK(refusal("/ordres", 3)
             .starts_with("plan.json: field \"ordres\": unknown field; expected one of: format, "
                          "version, name,"));
@@ -303,10 +307,12 @@ TEST_CASE("every built-in plan passes the checks of a file and round-trips") {
 }
 
 TEST_CASE("the built-in plans are what their names promise") {
-  // Longest possible sound: every take held to its limit, with 0.24 s of ramps and gaps.
+  // Longest possible sound of the steady and two-tone takes: each held to its limit, with 0.24 s of
+  // ramps and gaps.
   const auto longest = [](const Plan& plan) {
     std::size_t takes = 0;
     for (const StepPlan& step : plan.steps) {
+      if (step.method != "steady" && step.method != "smpte" && step.method != "ccif") continue;
       takes += std::max<std::size_t>(1, step.frequencies.size());
     }
     takes *= rung_count(plan.ladder);
@@ -316,17 +322,17 @@ TEST_CASE("the built-in plans are what their names promise") {
 
   const Plan portrait = load_plan("portrait", kMethods);
   CHECK(longest(portrait) < 600.0);
-  REQUIRE(portrait.steps.size() == 3);
-  CHECK(portrait.steps[0].frequencies == std::vector{Hertz(41.0), Hertz(997.0), Hertz(4990.0)});
+  REQUIRE(portrait.steps.size() == 7);
+  CHECK(portrait.steps[1].frequencies == std::vector{Hertz(41.0), Hertz(997.0), Hertz(4990.0)});
   CHECK(rung_count(portrait.ladder) == 21);
   CHECK(portrait.stop_thd_f_percent == 30.0);
   CHECK(portrait.stop_compression == Decibels(12.0));
 
   const Plan atlas = load_plan("atlas", kMethods);
   CHECK(rung_count(atlas.ladder) == 11);
-  REQUIRE(atlas.steps.size() == 3);
-  CHECK(atlas.steps[0].frequencies.size() == 12);
-  for (const Hertz f : atlas.steps[0].frequencies) {
+  REQUIRE(atlas.steps.size() == 6);
+  CHECK(atlas.steps[1].frequencies.size() == 12);
+  for (const Hertz f : atlas.steps[1].frequencies) {
     for (int order = 1; order <= 10 && (order == 1 || order * f.value() < 20000.0); ++order) {
       for (const double mains : {50.0, 60.0}) {
         CAPTURE(f.value());
