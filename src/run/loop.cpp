@@ -54,7 +54,7 @@ class Loop {
   Hertz rate_;
   Guard guard_;
   double delay_ = 0.0;
-  int played_ = 0;
+  int played_ = 0, takes_ = 0;
   LoopResult result_;
 };
 
@@ -150,17 +150,27 @@ void Loop::response() {
   result_.response = std::move(points);
 }
 
+// The two-tone methods whose tones need no plan.
+std::vector<std::string> pairs() {
+  std::vector<std::string> ids;
+  for (const Method& m : methods()) {
+    if (m.predict != nullptr && !m.needs.tones_required) ids.emplace_back(m.id);
+  }
+  return ids;
+}
+
 LoopResult Loop::measure() {
+  const std::vector<LevelDbfs> levels = levels_below(request_.ceiling);
+  const std::vector<std::string> methods = request_.products ? pairs() : std::vector<std::string>{};
+  takes_ = static_cast<int>(levels.size() * (request_.frequencies.size() + methods.size())) +
+           (request_.response ? 1 : 0);
   const Waveform chirp =
       chain_check_stimulus(rate_, chain_check_level(LevelDbfs(kLowest), request_.ceiling));
   const ChainCheck chain = judge_chain(chirp, {play(chirp, samples_in(Seconds(1.0), rate_))});
   delay_ = std::max(0.0, chain.delay);
-  for (const LevelDbfs send : levels_below(request_.ceiling)) {
+  for (const LevelDbfs send : levels) {
     for (const Hertz f : request_.frequencies) harmonics(f, send);
-    if (!request_.products) continue;
-    for (const Method& m : methods()) {
-      if (m.predict != nullptr && !m.needs.tones_required) products(std::string(m.id), send);
-    }
+    for (const std::string& method : methods) products(method, send);
   }
   if (request_.response) response();
   return std::move(result_);
