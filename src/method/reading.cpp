@@ -8,26 +8,51 @@
 
 namespace kneeprint {
 
-RelativeReading relate(double amplitude, double u, double dof, const Line& reference,
-                       double floor) {
+Amplitude amplitude_of(double read, double u, double dof) {
+  const bool in_noise = read <= noise_threshold(u);
+  return {without_noise(read, u), u, dof, in_noise,
+          in_noise ? amplitude_upper_limit(read, u) : 0.0};
+}
+
+RelativeReading relate(const Amplitude& amplitude, const Line& reference, double floor) {
   const double carrier = std::abs(reference.mean);
   RelativeReading out;
-  const double ratio = amplitude / carrier;
-  const double own = u / carrier;
-  const std::array parts{Contribution{own, dof},
-                         Contribution{ratio * reference.u / carrier, reference.dof},
+  out.ratio = amplitude.value / carrier;
+  out.common_u = out.ratio * reference.u / carrier;
+  const std::array parts{Contribution{amplitude.u / carrier, amplitude.dof},
+                         Contribution{out.common_u, reference.dof},
                          Contribution{floor / std::numbers::sqrt2, kInfiniteDof}};
   const Contribution combined = combine(parts);
   out.u = combined.u;
   out.dof = combined.dof;
-  out.ratio = ratio;
-  if (amplitude <= noise_threshold(u)) {
+  if (amplitude.in_noise) {
     out.flag = Flag::noise;
-    out.ratio = amplitude_upper_limit(amplitude, u) / carrier;
-  } else if (ratio <= floor) {
+    out.ratio = amplitude.limit / carrier;
+  } else if (out.ratio <= floor) {
     out.flag = Flag::floor;
   }
   return out;
+}
+
+RelativeReading relate(double amplitude, double u, double dof, const Line& reference,
+                       double floor) {
+  return relate(amplitude_of(amplitude, u, dof), reference, floor);
+}
+
+RelativeReading with_common(const RelativeReading& r, double relative_u) {
+  RelativeReading out = r;
+  const double common = r.ratio * relative_u;
+  const std::array parts{Contribution{r.u, r.dof}, Contribution{common, kInfiniteDof}};
+  const Contribution combined = combine(parts);
+  out.u = combined.u;
+  out.dof = combined.dof;
+  out.common_u = std::hypot(r.common_u, common);
+  return out;
+}
+
+bool serves_as_reference(const Line& tone, int blocks) {
+  // Noise alone passes 5 sigma in 4 of 10^6.
+  return std::abs(tone.mean) > std::max(5.0, 2.5 * std::sqrt(blocks)) * tone.u;
 }
 
 RelativeReading root_sum_of(std::span<const RelativeReading> parts) {
@@ -47,8 +72,11 @@ RelativeReading root_sum_of(std::span<const RelativeReading> parts) {
   std::vector<Contribution> terms;
   for (const RelativeReading& r : parts) {
     if (any_seen && r.flag == Flag::noise) continue;
-    terms.push_back({r.ratio * r.u / out.ratio, r.dof});
+    const double own = std::sqrt(std::max(0.0, r.u * r.u - r.common_u * r.common_u));
+    terms.push_back({r.ratio * own / out.ratio, r.dof});
+    out.common_u += r.ratio * r.common_u / out.ratio;
   }
+  terms.push_back({out.common_u, kInfiniteDof});
   if (any_seen && limits > 0.0) {
     const double most = std::sqrt(seen + limits) - out.ratio;
     terms.push_back({most / (2.0 * std::sqrt(3.0)), kInfiniteDof});

@@ -26,17 +26,39 @@ struct RelativeReading {
   double u = 0.0;      ///< standard uncertainty of the ratio, noise and floor combined
   double dof = kInfiniteDof;
   Flag flag = Flag::none;  ///< none, floor, noise
+  double common_u = 0.0;   ///< the part of u that all ratios of a take share: they err together
 };
 
-/// `amplitude` with `u` (type A) over the reference line; `floor` is the rig's own share as a ratio
-/// (0: unknown). The floor is a type B term of known amplitude and unknown phase, u = floor /
-/// sqrt 2.
-RelativeReading relate(double amplitude, double u, double dof, const Line& reference, double floor);
+/// The amplitude of a line, or of several taken together, as far as noise lets it be known.
+struct Amplitude {
+  double value = 0.0;  ///< what noise adds taken off
+  double u = 0.0;      ///< standard uncertainty, type A
+  double dof = kInfiniteDof;
+  bool in_noise = false;
+  double limit = 0.0;  ///< 95 % upper limit, where it is in the noise
+};
 
-/// Root sum of squares (u by JCGM 100:2008 eq. 10). Parts under the noise stay out of the value and
-/// widen the uncertainty: between none of them and all of them at their limits lies a rectangular
-/// distribution. All under the noise: the root sum of their limits, flagged noise; all at the
-/// floor: flagged so. No part: ratio 0.
+/// `read` as it stands in the spectrum, noise of `u` per component in it.
+Amplitude amplitude_of(double read, double u, double dof);
+
+/// An amplitude over the reference line; `floor` is the rig's own share as a ratio (0: unknown).
+/// The floor is a type B term of known amplitude and unknown phase, u = floor / sqrt 2.
+RelativeReading relate(const Amplitude& amplitude, const Line& reference, double floor);
+/// The same for amplitude_of(amplitude, u, dof).
+RelativeReading relate(double amplitude, double u, double dof, const Line& reference, double floor);
+/// `r` with a relative uncertainty, type B, that all ratios of the take share.
+RelativeReading with_common(const RelativeReading& r, double relative_u);
+
+/// Can other lines be referred to this tone? Its mean over `blocks` must be five times its
+/// uncertainty, and its phase known in every block: 2.5 times the noise there (of which alone the
+/// mean amplitude is 1.25 times, Rayleigh).
+bool serves_as_reference(const Line& tone, int blocks);
+
+/// Root sum of squares: each part's own errors by JCGM 100:2008 eq. 10, u = sqrt(sum (r u)^2) / D,
+/// those they share by eq. 16 with correlation 1, sum (r u) / D. Parts under the noise stay out of
+/// the value and widen the uncertainty: between none of them and all of them at their limits lies a
+/// rectangular distribution. All under the noise: the root sum of their limits, flagged noise; all
+/// at the floor: flagged so. No part: ratio 0.
 RelativeReading root_sum_of(std::span<const RelativeReading> parts);
 
 /// Does any sample reach the converter's end? |x| >= 0.9999 of full scale.

@@ -15,9 +15,6 @@
 namespace kneeprint {
 namespace {
 
-// Below this the fundamental is no reference for anything (noise alone passes 5 sigma in 4 of
-// 10^6).
-constexpr double kLeastOverNoise = 5.0;
 constexpr double kDegrees = 180.0 / std::numbers::pi;
 
 CoherentTone tone_of(const TakeSpec& spec, Hertz rate) {
@@ -66,46 +63,6 @@ Uncertain in_db(const Uncertain& power) {
   return {10.0 * std::log10(power.value), 0.5 * kDbPerRelative * power.u / power.value, power.dof};
 }
 
-// rss of ratios with propagated uncertainty (JCGM 100:2008 eq. 10: u(D) = sqrt(sum (r u)^2) / D).
-Uncertain root_sum(const std::vector<RelativeReading>& parts) {
-  double sum = 0;
-  std::vector<Contribution> terms;
-  for (const auto& p : parts) sum += p.ratio * p.ratio;
-  const double root = std::sqrt(sum);
-  if (root == 0.0) return {0.0, 0.0, kInfiniteDof};
-  for (const auto& p : parts) terms.push_back({p.ratio * p.u / root, p.dof});
-  const Contribution c = combine(terms);
-  return {root, c.u, c.dof};
-}
-
-struct Distortion {
-  Uncertain ratio;
-  Flag flag = Flag::none;
-};
-
-// Orders under the noise stay out of the value and widen the uncertainty: between none of them and
-// all of them at their limits lies a rectangular distribution. When every order is under the noise,
-// the figure itself is an upper limit.
-Distortion total(const std::vector<RelativeReading>& orders) {
-  std::vector<RelativeReading> seen, limits;
-  bool any_above_floor = false;
-  for (const auto& r : orders) {
-    (r.flag == Flag::noise ? limits : seen).push_back(r);
-    any_above_floor |= r.flag == Flag::none;
-  }
-  if (seen.empty()) return {root_sum(limits), Flag::noise};
-  Uncertain d = root_sum(seen);
-  if (!limits.empty()) {
-    const double most = std::hypot(d.value, root_sum(limits).value);
-    const std::array parts{Contribution{d.u, d.dof},
-                           Contribution{(most - d.value) / (2.0 * std::sqrt(3.0)), kInfiniteDof}};
-    const Contribution c = combine(parts);
-    d.u = c.u;
-    d.dof = c.dof;
-  }
-  return {d, any_above_floor ? Flag::none : Flag::floor};
-}
-
 // How far a take is from the uncertainty that its plan wants.
 struct Integration {
   double longer = 0.0;       // the hold must be so many times as long; <= 1: long enough
@@ -150,7 +107,9 @@ class SteadyReading {
  private:
   void read_floor();
   void read_drive();
-  void read_fundamental(LevelPoint& level);
+  void read_fundamental();
+  void state_output(LevelPoint& level);
+  double output_u_db(std::initializer_list<double> type_b) const;
   void read_harmonics(Curves& out, LevelPoint& level);
   void read_residual(LevelPoint& level);
   void read_dc(LevelPoint& level);
@@ -169,7 +128,8 @@ class SteadyReading {
   /// As it left the unit: the return's share of the rig's response is taken out. The blocks are
   /// turned by the fundamental as recorded, so that its own turn within the return is given back.
   Line read_line(int order) const {
-    Line l = spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
+    Line l = order == 1 ? spectra_.tone(bin(1), first_)
+                        : spectra_.mean(bin(order), first_, [&](int b) { return order * turn(b); });
     const std::complex<double> own = rig_.response.ret(tone_.frequency).response;
     const std::complex<double> share =
         std::abs(own) * ret_ratio(order).response * std::polar(1.0, (1.0 - order) * std::arg(own));
@@ -204,7 +164,6 @@ class SteadyReading {
   std::vector<double> floor_;  // by order, relative to the fundamental; empty: unknown
   double drive_ = 0.0;         // level at the unit's input, in the rig's unit
   LevelDbfs return_level_;
-  double output_type_a_db_ = 0.0;
   double return_u_db_ = 0.0;  // type B: full-scale voltage and the split of the loop's response
   Integration integration_;
 };
@@ -221,22 +180,33 @@ void SteadyReading::read_drive() {
   drive_ = rig_.ret.level_of_peak(std::abs(line.mean / rig_.response.ret(f).response));
 }
 
-void SteadyReading::read_fundamental(LevelPoint& level) {
+void SteadyReading::read_fundamental() {
   fundamental_ = line(1);
   const double peak = std::abs(fundamental_.mean);
   const LoopResponse::Share own = rig_.response.ret(tone_.frequency);
   return_level_ = LevelDbfs(20.0 * std::log10(peak * std::abs(own.response)));
   return_u_db_ = std::hypot(rig_.ret.standard_uncertainty.value(), own.u.value());
-  const double relative_u = fundamental_.u / peak;
-  const double k = coverage_factor_95(fundamental_.dof);
-  output_type_a_db_ = kDbPerRelative * relative_u;
-  level.output = rig_.ret.level_of_peak(peak);
-  level.output_u_db = k * std::hypot(output_type_a_db_, return_u_db_);
+}
+
+// Expanded, of the fundamental's level: its scatter, the rig's own share in it, and these.
+double SteadyReading::output_u_db(std::initializer_list<double> type_b) const {
+  const double own_floor = floor_.empty() ? 0.0 : floor_[1] / std::numbers::sqrt2;
+  std::vector<Contribution> parts{
+      {kDbPerRelative * fundamental_.u / std::abs(fundamental_.mean), fundamental_.dof},
+      {kDbPerRelative * own_floor, kInfiniteDof}};
+  for (const double u : type_b) parts.push_back({u, kInfiniteDof});
+  const Contribution c = combine(parts);
+  return coverage_factor_95(c.dof) * c.u;
+}
+
+void SteadyReading::state_output(LevelPoint& level) {
+  level.output = rig_.ret.level_of_peak(std::abs(fundamental_.mean));
+  level.output_u_db = output_u_db({return_u_db_});
   // Send and return together are what the loop showed: their split does not touch the gain.
   if (rig_.gain_known) {
     level.gain_db = *level.output - drive_;
-    level.gain_u_db = k * std::hypot(output_type_a_db_, rig_.ret.standard_uncertainty.value(),
-                                     rig_.send.standard_uncertainty.value());
+    level.gain_u_db = output_u_db(
+        {rig_.ret.standard_uncertainty.value(), rig_.send.standard_uncertainty.value()});
   }
   // Transfer phase at the block's start, the rig taken out; the stimulus is a cosine of
   // phase 0.
@@ -280,9 +250,10 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
   if (!(r.ratio > 0.0)) return;  // exactly nothing, as only arithmetic gives it: no level to state
   p.level = rig_.ret.level_of_peak(r.ratio * peak);
   p.relative_db = 20.0 * std::log10(r.ratio);
-  const double level_u =
-      std::hypot(coverage_factor_95(r.dof) * return_u_db_, kDbPerRelative * expanded / r.ratio);
-  p.level_u_db = level_u;
+  const std::array level_parts{Contribution{kDbPerRelative * r.u / r.ratio, r.dof},
+                               Contribution{return_u_db_, kInfiniteDof}};
+  const Contribution level_u = combine(level_parts);
+  p.level_u_db = coverage_factor_95(level_u.dof) * level_u.u;
   if (std::abs(line.mean) > 0.0) p.noise_u_db = kDbPerRelative * line.u / std::abs(line.mean);
   p.noise_dof = line.dof;
   p.in_phase = line.mean.real() * rig_.ret.peak_per_full_scale;
@@ -294,7 +265,7 @@ void SteadyReading::place(HarmonicPoint& p, const RelativeReading& r, const Line
     const double own_floor = floor_.empty() ? 0.0 : floor_[1] * peak / std::numbers::sqrt2;
     p.component_u = std::hypot(line.u, own_floor) * rig_.ret.peak_per_full_scale;
     p.dof = line.dof;
-    p.level_u_db = coverage_factor_95(line.dof) * std::hypot(output_type_a_db_, return_u_db_);
+    p.level_u_db = output_u_db({return_u_db_});
     return;
   }
   p.expanded_u_db = kDbPerRelative * expanded / r.ratio;
@@ -321,12 +292,7 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
       const Line& l = line(n);
       const double floor = floor_.empty() ? 0.0 : floor_[static_cast<std::size_t>(n)];
       RelativeReading r = relate(std::abs(l.mean), l.u, l.dof, fundamental_, floor);
-      const std::array doubts{
-          Contribution{r.u, r.dof},
-          Contribution{r.ratio * ret_ratio(n).u.value() / kDbPerRelative, kInfiniteDof}};
-      const Contribution doubt = combine(doubts);
-      r.u = doubt.u;
-      r.dof = doubt.dof;
+      r = with_common(r, ret_ratio(n).u.value() / kDbPerRelative);
       if (n == 1) r = {1.0, 0.0, l.dof, Flag::none};
       if (n > 1 && n <= spec_.settings.wanted_orders) {
         want(integration_, r, l.u / std::abs(fundamental_.mean), spec_.settings.wanted_harmonic_u);
@@ -349,10 +315,10 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
     if (!spec_.down) out.responses.push_back(response);  // the table has no direction
   }
   if (summed.empty()) return;
-  const Distortion thd = total(summed);
-  const double d = thd.ratio.value;
+  const RelativeReading thd = root_sum_of(summed);
+  const double d = thd.ratio;
   if (!(d > 0.0)) return;
-  const double expanded = coverage_factor_95(thd.ratio.dof) * thd.ratio.u;
+  const double expanded = coverage_factor_95(thd.dof) * thd.u;
   const double to_r = 1.0 / std::sqrt(1.0 + d * d);  // THD_R = THD_F / sqrt(1 + THD_F^2)
   level.thd_f_percent = 100.0 * d;
   level.thd_f_u_percent = 100.0 * expanded;
@@ -361,12 +327,12 @@ void SteadyReading::read_harmonics(Curves& out, LevelPoint& level) {
   const std::array flags{level.flag, thd.flag};
   level.flag = gravest(flags);
   if (even.empty() || odd.empty()) return;
-  const Distortion e = total(even), o = total(odd);
+  const RelativeReading e = root_sum_of(even), o = root_sum_of(odd);
   if (e.flag == Flag::noise || o.flag == Flag::noise) return;
-  if (!(e.ratio.value > 0.0) || !(o.ratio.value > 0.0)) return;
-  level.even_odd_db = 20.0 * std::log10(e.ratio.value / o.ratio.value);
-  const std::array parts{Contribution{kDbPerRelative * e.ratio.u / e.ratio.value, e.ratio.dof},
-                         Contribution{kDbPerRelative * o.ratio.u / o.ratio.value, o.ratio.dof}};
+  if (!(e.ratio > 0.0) || !(o.ratio > 0.0)) return;
+  level.even_odd_db = 20.0 * std::log10(e.ratio / o.ratio);
+  const std::array parts{Contribution{kDbPerRelative * e.u / e.ratio, e.dof},
+                         Contribution{kDbPerRelative * o.u / o.ratio, o.dof}};
   const Contribution c = combine(parts);
   level.even_odd_u_db = coverage_factor_95(c.dof) * c.u;
 }
@@ -451,13 +417,14 @@ TakeVerdict SteadyReading::read(Curves& out) {
     return verdict;
   }
   read_lines();
-  read_fundamental(level);
-  if (std::abs(fundamental_.mean) < kLeastOverNoise * fundamental_.u) {
+  read_fundamental();
+  if (!serves_as_reference(fundamental_, level.blocks)) {
     level.flag = Flag::noise;
     out.levels.push_back(level);
     return verdict;
   }
   read_floor();
+  state_output(level);
   read_harmonics(out, level);
   if (spec_.settings.wanted_harmonic_u.value() > 0.0) {
     verdict.longer = integration_.longer;

@@ -54,7 +54,9 @@ HeldStimulus held(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
 
 // One product, or several taken together.
 struct TwoToneReading::Part {
-  double amplitude = 0.0, u = 0.0, dof = kInfiniteDof;
+  double read = 0.0;       // as it stands in the spectrum
+  double amplitude = 0.0;  // what noise adds taken off
+  double u = 0.0, dof = kInfiniteDof;
   double noise_threshold = 0.0;  // at most this: noise
   double limit = 0.0;            // 95 % upper limit of the amplitude
   double split_u = 0.0;          // relative, from the unknown split of the rig's response
@@ -143,12 +145,8 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
 
   tone1_ = product({1, 0});
   tone2_ = product({0, 1});
-  const auto present = [](const Line& l) {
-    constexpr double kLeastOverNoise =
-        5.0;  // as for a steady sine: below, no reference for anything
-    return std::abs(l.mean) > kLeastOverNoise * l.u;
-  };
-  has_tones_ = present(tone1_) && present(tone2_);
+  const int averaged = spectra_.blocks() - first_;
+  has_tones_ = serves_as_reference(tone1_, averaged) && serves_as_reference(tone2_, averaged);
   const auto own = [&](Hertz f) { return std::abs(rig.response.ret(f).response); };
   // The return's converter sees the sum of both tones' peaks.
   if (has_tones_) {
@@ -195,8 +193,10 @@ Line TwoToneReading::product(ProductIndex p) const {
   // A product at a negative frequency shows as the conjugate at the positive one.
   const bool negative = p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value() < 0.0;
   const double sign = negative ? -1.0 : 1.0;
-  Line l = steadied_.time.with_loss(
-      spectra_.mean(bin(p), first_, [&](int b) { return sign * turn(p, b); }), frequency(p));
+  const Line read = p.order() == 1
+                        ? spectra_.tone(bin(p), first_)
+                        : spectra_.mean(bin(p), first_, [&](int b) { return sign * turn(p, b); });
+  Line l = steadied_.time.with_loss(read, frequency(p));
   // The tones' own turns in the return are given back: their phases were taken as recorded.
   const auto own = [&](Hertz f) { return rig_.response.ret(f).response; };
   const std::complex<double> share =
@@ -262,11 +262,12 @@ TwoToneReading::Part TwoToneReading::single(ProductIndex p, const Reference& ref
   part.readable = falls_on(p).empty();
   if (!part.in_reach || bin(p) == 0) return part;
   const Line l = product(p);
-  part.amplitude = std::abs(l.mean);
+  part.read = std::abs(l.mean);
+  part.amplitude = without_noise(part.read, l.u);
   part.u = l.u;
   part.dof = l.dof;
   part.noise_threshold = noise_threshold(l.u);
-  part.limit = amplitude_upper_limit(part.amplitude, l.u);
+  part.limit = amplitude_upper_limit(part.read, l.u);
   part.split_u = rig_.response.ret_ratio(frequency(p), tones_.f2).u.value() / kDbPerRelative;
   part.floor = rig_floor(p, reference);
   if (p.k1 != 0) part.alone = alone(p);  // harmonics of f2 need no f1
@@ -274,21 +275,15 @@ TwoToneReading::Part TwoToneReading::single(ProductIndex p, const Reference& ref
 }
 
 RelativeReading TwoToneReading::relative(const Part& part, const Reference& reference) const {
-  RelativeReading r = relate(part.amplitude, part.u, part.dof, reference.line, part.floor);
-  const double carrier = std::abs(reference.line.mean);
-  if (part.amplitude <= part.noise_threshold) r.flag = Flag::noise;
-  if (r.flag == Flag::noise) r.ratio = part.limit / carrier;
+  const bool in_noise = part.read <= part.noise_threshold;
+  RelativeReading r = relate(Amplitude{part.amplitude, part.u, part.dof, in_noise, part.limit},
+                             reference.line, part.floor);
   // What stands there with f2 alone is not the unit's intermodulation: products less than 10 dB
   // above it are flagged. Where the segment shows noise alone, the noise flag has spoken already.
-  if (r.flag == Flag::none && part.alone && *part.alone * kTenDecibels > part.amplitude) {
+  if (r.flag == Flag::none && part.alone && *part.alone * kTenDecibels > part.read) {
     r.flag = Flag::floor;
   }
-  const std::array doubts{Contribution{r.u, r.dof},
-                          Contribution{r.ratio * part.split_u, kInfiniteDof}};
-  const Contribution doubt = combine(doubts);
-  r.u = doubt.u;
-  r.dof = doubt.dof;
-  return r;
+  return with_common(r, part.split_u);
 }
 
 TwoToneReading::Row TwoToneReading::finish(const std::string& name, const Part& part,
@@ -334,6 +329,7 @@ TwoToneReading::Row TwoToneReading::arithmetic_sum(const std::string& name,
     const Part part = single(p, reference);
     all.in_reach &= part.in_reach;
     all.readable &= part.readable;
+    all.read += part.read;
     all.amplitude += part.amplitude;
     all.limit += part.limit;
     all.floor += part.floor;
@@ -358,6 +354,7 @@ TwoToneReading::Row TwoToneReading::root_sum(const std::string& name,
     const Part& part = parts.emplace_back(single(p, reference));
     all.in_reach &= part.in_reach;
     all.readable &= part.readable;
+    all.read = std::hypot(all.read, part.read);
     all.amplitude = std::hypot(all.amplitude, part.amplitude);
     all.limit = std::hypot(all.limit, part.limit);
     all.floor = std::hypot(all.floor, part.floor);

@@ -86,7 +86,7 @@ TEST_CASE("the upper limit of an amplitude is the non-centrality that Boost find
     if (read * read > -2.0 * std::log(0.95) * (1.0 + 1e-9)) {
       expected =
           std::max(least, std::sqrt(boost::math::non_central_chi_squared::find_non_centrality(
-                              2.0, read * read, 0.05)));
+                              2.0, read * read, 0.025)));
     }
     CHECK(amplitude_upper_limit(3.0 * read, 3.0) == doctest::Approx(3.0 * expected).epsilon(1e-12));
   }
