@@ -82,7 +82,8 @@ def power(x, rate, low, high, without=()):
 
 
 def at_drive(rows, take):
-    return [r for r in rows if abs(float(r["drive"]) - take["send_dbfs"] - FULL_SCALE_DBU) < 0.01]
+    drive = take["send_dbfs"] + FULL_SCALE_DBU
+    return [r for r in rows if r["drive"] and abs(float(r["drive"]) - drive) < 0.01]
 
 
 def check_steady(take):
@@ -222,7 +223,7 @@ def check_silence(take):
         weighted = scipy.fft.rfft(padded)
         weighted *= weight(f) * ((f >= 20) & (f <= 20000))
         state = scipy.fft.irfft(weighted, len(padded))[block:block + length]
-        compare(figure, FULL_SCALE_DBU + 10 * math.log10(2 * np.mean(state ** 2)),
+        compare(f"{figure} at rest", FULL_SCALE_DBU + 10 * math.log10(2 * np.mean(state ** 2)),
                 stated[figure]["value"])
 
 
@@ -266,5 +267,8 @@ for take in takes:
 for kind, count in compared.items():
     print(f"{kind}: {count} compared, largest difference {worst[kind]:.7f} dB")
 check(sum(compared.values()) >= 300, "at least 300 figures could be compared")
+for kind in ("relative", "dc", "thdn", "noise", "even_odd", "noise at rest", "noise-a at rest", "smpte",
+             "din", "ccif", "tdfd", "modulation", "products", "multitone", "sweep"):
+    check(kind in compared, f"{kind}: compared")
 for kind, most in worst.items():
     check(most < TOLERANCE_DB, f"{kind}: SciPy agrees within {TOLERANCE_DB} dB")
