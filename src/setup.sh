@@ -10,7 +10,7 @@ packages=(
   nlohmann-json3-dev libcli11-dev libfmt-dev doctest-dev
   fonts-dejavu-core
   # what the tests check against
-  python3 python3-scipy jackd2 ecasound swh-plugins sox ffmpeg
+  python3 python3-scipy ngspice jackd2 ecasound swh-plugins sox ffmpeg
 )
 
 missing=()

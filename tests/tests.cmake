@@ -16,6 +16,10 @@ foreach(folder quantity platform signal curve method sigmoid unit rig print figu
   endif()
 endforeach()
 
+# The sine fits of IEEE Std 1057 are written with it.
+find_package(Eigen3 REQUIRED)
+target_link_libraries(method_tests PRIVATE Eigen3::Eigen)
+
 # Checks against sources outside the project: Python's standard library and SciPy, a real audio server,
 # third-party processors. Each gets a fresh folder in the build tree.
 find_program(KNEEPRINT_PYTHON NAMES python3 PATHS /usr/bin NO_DEFAULT_PATH REQUIRED)

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The results, as plain tables: one struct per row of each CSV. Columns, definitions and sources
-// are those of the README's "What the columns mean". An empty optional is an empty cell: not
+// are those of the README, "The tables, column by column". An empty optional is an empty cell: not
 // measured, or not measurable on this rig; never a made-up zero.
 #pragma once
 
@@ -86,7 +86,7 @@ struct IntermodPoint {
   Cell am_percent, pm_percent;  ///< the pair's amplitude and phase modulation parts
   int blocks = 0;               ///< averaged
   double settled_after_s = 0.0;
-  double ratio = 1.0;           ///< amplitude of f1 over that of f2, as played
+  double ratio = 1.0;  ///< amplitude of f1 over that of f2, as played
 };
 
 struct ResponsePoint {

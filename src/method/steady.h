@@ -2,7 +2,7 @@
 // Steady sine: harmonics, gain, DC, THD, THD+N, SINAD, noise and even/odd balance at one frequency
 // and one drive.
 //
-// Definitions (the README's "What the columns mean" repeats them):
+// Definitions (the README, "The tables, column by column", repeats them):
 //   relative_db  20 log10 (|H_n| / |H_1|)
 //   phase        arg H_n - n arg H_1, cosine reference
 //   THD_F        sqrt(sum_{n=2..N} |H_n|^2) / |H_1|, N the last order below min(20 kHz, 0.45 rate)
