@@ -45,9 +45,26 @@ double largest_ratio(double dof1, double dof2) {
   return place.quantile;
 }
 
-// Up to here an amplitude's upper limit is the noise threshold: a non-centrality of 5.99 (its
-// square) stays below 1 in more than 2.5 % of cases, so a smaller one satisfies the condition.
-constexpr double kThresholdRules = 1.0;
+// Six multiples on either side, counted from where they exceed the noise in 20 % of cases: then hum
+// from nothing to 1.5 times the noise leaves 94.7 to 95.7 % in a 95 % interval (a trial with 2 10^5
+// repeats, hum falling as 1/f); counted only when certain (0.1 %) it would be 91 % just below that.
+constexpr int kMultiples = 6;
+double hum_ratio(int count) {
+  static const auto ratios = [] {
+    std::array<double, 2 * kMultiples + 1> out{};
+    for (std::size_t n = 1; n < out.size(); ++n) {
+      const double dof = 2.0 * static_cast<double>(n);
+      out[n] = quantile(boost::math::chi_squared(dof), 0.8) / dof;
+    }
+    return out;
+  }();
+  return ratios.at(static_cast<std::size_t>(count));
+}
+
+// Up to here an amplitude's upper limit is the noise threshold: with its non-centrality (5.99, its
+// square) a chi-square of 2 dof stays below 0.7 in less than 2.5 % of cases, so the one that does
+// in 2.5 % is smaller.
+constexpr double kThresholdRules = 0.7;
 
 // The non-centrality with which a chi-square of 2 dof stays below `x` in 2.5 % of cases.
 double centrality(double x) {
@@ -112,12 +129,7 @@ BlockSpectra::Noise BlockSpectra::noise_around(std::size_t bin, int first) const
           2.0 * kMedianEfficiency * static_cast<double>(powers.size())};
 }
 
-// Six multiples on either side, counted from where they exceed the noise in 20 % of cases: then hum
-// from nothing to 1.5 times the noise leaves 94.7 to 95.7 % in a 95 % interval (a trial with 2 10^5
-// repeats, hum falling as 1/f); counted only when certain (0.1 %) it would be 91 % just below that.
 double BlockSpectra::hum_at(std::size_t bin, int first, const Noise& noise) const {
-  constexpr int kMultiples = 6;
-  constexpr double kExceeds = 0.8;
   if (!(noise.dof > 0.0)) return 0.0;
   const auto centre = static_cast<long>(bin), stride = static_cast<long>(stride_);
   const int averaged = blocks() - first;
@@ -143,8 +155,7 @@ double BlockSpectra::hum_at(std::size_t bin, int first, const Noise& noise) cons
     }
     if (count == 0) continue;
     const double power = sum / count;
-    const boost::math::chi_squared squares(2.0 * count);
-    if (power > of_noise * quantile(squares, kExceeds) / (2.0 * count)) {
+    if (power > of_noise * hum_ratio(count)) {
       most = std::max(most, std::sqrt(power - of_noise));
     }
   }

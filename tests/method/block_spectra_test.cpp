@@ -82,8 +82,8 @@ TEST_CASE("the upper limit of an amplitude is the non-centrality that Boost find
   for (double read = 0.0; read < 4.0; read += 0.01) {
     CAPTURE(read);
     double expected = least;
-    // At or under the 5 % point of noise alone no amplitude satisfies the condition.
-    if (read * read > -2.0 * std::log(0.95) * (1.0 + 1e-9)) {
+    // At or under the 2.5 % point of noise alone no amplitude satisfies the condition.
+    if (read * read > -2.0 * std::log(0.975) * (1.0 + 1e-9)) {
       expected =
           std::max(least, std::sqrt(boost::math::non_central_chi_squared::find_non_centrality(
                               2.0, read * read, 0.025)));

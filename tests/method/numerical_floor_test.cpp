@@ -24,8 +24,8 @@ double thd_db(const TakeSpec& spec, const Waveform& take) {
 
 TEST_CASE("numerical floor: under -250 dB in memory, under -170 dB from stored takes") {
   TemporaryFolder folder;
-  for (const double rate : {44100.0, 48000.0, 96000.0}) {
-    for (const double asked : {41.0, 100.0, 997.0, 1000.0, 4990.0}) {
+  for (const double rate : {44100.0, 96000.0}) {
+    for (const double asked : {41.0, 997.0, 1000.0, 4990.0}) {
       for (const double send : {0.0, -40.0}) {
         CAPTURE(rate);
         CAPTURE(asked);
