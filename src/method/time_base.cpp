@@ -10,7 +10,7 @@
 #include <numeric>
 #include <vector>
 
-#include "method/reading.h"
+#include "method/products.h"
 #include "signal/fft.h"
 #include "signal/resample.h"
 #include "signal/uniform_spline.h"
@@ -33,6 +33,8 @@ constexpr double kLineOverNoise = 5.0;  // noise alone passes in 4 of 10^6
 // rad^2 of the tracker's own noise: beyond, a phase slips whole turns, and noise alone is drawn
 // into a tone (common practice for phase-locked loops).
 constexpr double kMostPhaseNoise = 0.1;
+constexpr std::size_t kHighestHarmonic = 20;
+constexpr int kHighestProduct = 5;
 constexpr Hertz kSidebands{500.0};  // how far from the tone jitter is looked for
 constexpr Hertz kSlowestFlutter{0.5}, kFastestFlutter{10.0};
 
@@ -42,6 +44,7 @@ class Follower {
   Follower(const Waveform& response, const HoldLayout& hold, std::span<const std::size_t> tones)
       : response_(response), hold_(hold), rate_(response.rate) {
     for (const std::size_t tone : tones) stride_ = std::gcd(stride_, tone);
+    find_lines(tones);
     const auto around = static_cast<long>(samples_in(kAround, rate_));
     begin_ = std::max(0L, static_cast<long>(hold.first_block) - around);
     end_ = std::min(static_cast<long>(response.samples.size()),
@@ -109,6 +112,27 @@ class Follower {
   double radians_per_sample(std::size_t bin) const {
     return kTurn * static_cast<double>(bin) / static_cast<double>(hold_.block);
   }
+
+  // DC, the harmonics of one tone, the products of two, the tones alone of more. Not every multiple
+  // of what the tones share: flutter that turns whole cycles in a block is none of theirs.
+  void find_lines(std::span<const std::size_t> tones) {
+    lines_.assign(tones.begin(), tones.end());
+    lines_.push_back(0);
+    if (tones.size() == 1) {
+      for (std::size_t order = 2; order <= kHighestHarmonic; ++order) {
+        lines_.push_back(order * tones[0]);
+      }
+    } else if (tones.size() == 2) {
+      for (const ProductIndex p : products_to_order(kHighestProduct, tones[0], tones[1])) {
+        lines_.push_back(static_cast<std::size_t>(
+            std::abs(p.k1 * static_cast<long>(tones[0]) + p.k2 * static_cast<long>(tones[1]))));
+      }
+    }
+    std::ranges::sort(lines_);
+    lines_.erase(std::unique(lines_.begin(), lines_.end()), lines_.end());
+    std::erase_if(lines_, [&](std::size_t k) { return 2 * k >= hold_.block; });
+  }
+  bool is_line(std::size_t bin) const { return std::ranges::binary_search(lines_, bin); }
 
   // Phase of each tone in short looks, unwrapped from look to look: e where the tone tells it
   // best, which is where amplitude times frequency is greatest.
@@ -204,7 +228,7 @@ class Follower {
     std::vector<std::complex<double>> line(spectra.bins()), slope(spectra.bins());
     const double to_fft = 0.5 * static_cast<double>(hold_.block);
     const double averaged = std::sqrt(static_cast<double>(spectra.blocks()));
-    for (std::size_t k = 0; k + 1 < spectra.bins(); k += stride_) {
+    for (const std::size_t k : lines_) {
       std::complex<double> mean = 0.0;
       for (int b = 0; b < spectra.blocks(); ++b) mean += spectra.at(b, k);
       mean /= static_cast<double>(spectra.blocks());
@@ -246,7 +270,7 @@ class Follower {
       const std::complex<double> tone = spectra.at(b, lead_);
       if (!(std::abs(tone) > 0.0)) return 0.0;
       for (std::size_t k = 1; k <= last; ++k) {
-        if (k % stride_ == 0) continue;
+        if (is_line(lead_ + k) || is_line(lead_ - k)) continue;
         const std::complex<double> upper = spectra.at(b, lead_ + k) / tone,
                                    lower = std::conj(spectra.at(b, lead_ - k) / tone);
         (k <= emptied ? within : beyond) +=
@@ -309,6 +333,7 @@ class Follower {
   const HoldLayout& hold_;
   Hertz rate_;
   std::size_t stride_ = 0;
+  std::vector<std::size_t> lines_;  // bins, ascending
   long begin_ = 0, end_ = 0;
   std::size_t lead_ = 0;  // cycles per block of the tone that tells time best; 0: none does
   long hop_ = 1;

@@ -50,9 +50,9 @@ struct SteadiedTake {
 };
 
 /// `hold`: where the response is steady, and 10 ms before and after it. `tones`: cycles per block
-/// of the stimulus' tones; the one that tells time best leads, all lines that they can cause
-/// follow. Excursions of up to 8 ms are followed. Never throws for bad data: with no tone, or one
-/// too weak to tell, the response stands.
+/// of the stimulus' tones; the one that tells time best leads, the harmonics of one (to 20),
+/// the products of two (to order 5) follow. Excursions of up to 8 ms are followed. Never throws for
+/// bad data: with no tone, or one too weak to tell, the response stands.
 SteadiedTake steady_time(const Waveform& response, const HoldLayout& hold,
                          std::span<const std::size_t> tones);
 

@@ -180,6 +180,28 @@ TEST_CASE("smpte products through speed error and flutter: amplitudes, AM and PM
   }
 }
 
+TEST_CASE("flutter that turns whole cycles in a block is no product of two tones") {
+  // 62 and 7004 Hz in blocks of 0.5 s share one bin: every bin is some product of theirs.
+  const TakeSpec spec = spec_for("smpte", 0.0, -3.0);
+  Stimulus s = stimulus_of(spec);
+  s.hold.block = 24000;
+  s.hold.blocks = 4;
+  const std::array tones{cycles_of(62.0, s), cycles_of(7004.0, s)};
+  const double until = static_cast<double>(s.hold.end()) / kRate.value() + kHoldMargin.value();
+  for (const double rate_hz : {2.0, 4.0, 10.0}) {
+    CAPTURE(rate_hz);
+    const Recorder recorder{0.0, {{rate_hz, 0.001, 0.5}}};
+    const Waveform take = record(s, {{62.0, 0.5, 0.0, until}, {7004.0, 0.125}}, recorder);
+    const SteadiedTake steadied = steady_time(take, s.hold, tones);
+    CHECK(steadied.time.flutter == doctest::Approx(0.001).epsilon(0.1));
+    const BlockSpectra spectra(steadied.or_else(take), s.hold, 1);
+    for (int b = 0; b < spectra.blocks(); ++b) {
+      CHECK(std::abs(decibels(std::abs(spectra.at(b, tones[1])) / 0.125)) < 0.001);
+      CHECK(std::abs(decibels(std::abs(spectra.at(b, tones[0])) / 0.5)) < 0.001);
+    }
+  }
+}
+
 TEST_CASE("ccif products through speed error and flutter") {
   const TakeSpec spec = spec_for("ccif", 0.0, -3.0);
   const Stimulus s = stimulus_of(spec);
