@@ -74,12 +74,12 @@ struct LevelPoint {
 };
 
 struct IntermodPoint {
-  std::string method;  ///< smpte, din, modulation, ccif, tdfd, square-sine, dim-30, dim-100
+  std::string method;  ///< smpte, din, modulation, ccif, tdfd, square-sine
   double f1_hz = 0.0, f2_hz = 0.0;
   double drive = 0.0;  ///< rms of the sine with the same peak
   LevelUnit unit = LevelUnit::dbfs;
   /// m2, m3, d2, d3, total; their root-sum-of-squares forms m2-rss, m3-rss, d3-rss, total-rss;
-  /// square-sine, dim-30, dim-100.
+  /// square-sine.
   std::string product;
   Cell percent, db, expanded_u_db, floor_db;
   Flag flag = Flag::none;

@@ -235,8 +235,8 @@ double without_noise(double read, double u) {
 double amplitude_upper_limit(double read, double u) {
   if (u <= 0.0) return read;
   // Far above the noise a Rice variate is normal to u^2 / read.
-  constexpr double kNormal = 1e3, kOneSided95 = 1.6448536269514722;
-  if (read > kNormal * u) return read + kOneSided95 * u;
+  constexpr double kNormal = 1e3, kTwoSided95 = 1.959963984540054;
+  if (read > kNormal * u) return read + kTwoSided95 * u;
   const double normalised = (read / u) * (read / u);
   const double least = noise_threshold(u);
   // With amplitude nu, (read/u)^2 is non-central chi-square with 2 dof and non-centrality (nu/u)^2.

@@ -7,6 +7,7 @@
 #include "method/multitone.h"
 #include "method/reference_tone.h"
 #include "method/silence.h"
+#include "method/square_sine.h"
 #include "method/steady.h"
 #include "method/swept.h"
 
@@ -22,6 +23,7 @@ std::span<const Method> methods() {
       modulation(),
       ccif_difference(),
       total_difference(),
+      square_sine(),
       multitone(),
       silence(),
       reference_tone(),

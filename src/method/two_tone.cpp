@@ -119,10 +119,7 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
       tones_(coherent(pair, spec, rate_)),
       hold_(hold_of(tones_, spec, rate_)),
       tail_(tail_of(pair, tones_, spec, rate_)),
-      steadied_(
-          in_stimulus_time(take.response, hold_, std::array{tones_.cycles1, tones_.cycles2}, rig)),
-      spectra_(steadied_.or_else(take.response), hold_, std::gcd(tones_.cycles1, tones_.cycles2),
-               steadied_.emptied),
+      lines_(take.response, hold_, tones_, rig),
       products_(products_to_order(kHighestOrder, tones_.cycles1, tones_.cycles2)) {
   if (tail_.blocks > 0) {
     const SteadiedTake alone =
@@ -132,9 +129,9 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
   }
   std::vector<std::size_t> watched;
   for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
-    if (in_reach(p)) watched.push_back(bin(p));
+    if (lines_.in_reach(p)) watched.push_back(lines_.bin(p));
   }
-  const Settled settled = judge_settling(spectra_, watched, spec.settings,
+  const Settled settled = judge_settling(lines_.spectra(), watched, spec.settings,
                                          Seconds(static_cast<double>(hold_.block) / rate_.value()));
   first_ = settled.first;
   verdict_.settled = settled.settled;
@@ -145,7 +142,7 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
 
   tone1_ = product({1, 0});
   tone2_ = product({0, 1});
-  const int averaged = spectra_.blocks() - first_;
+  const int averaged = lines_.spectra().blocks() - first_;
   has_tones_ = serves_as_reference(tone1_, averaged) && serves_as_reference(tone2_, averaged);
   const auto own = [&](Hertz f) { return std::abs(rig.response.ret(f).response); };
   // The return's converter sees the sum of both tones' peaks.
@@ -157,68 +154,24 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
                       pair.share2() * std::abs(rig.response.send(tones_.f2).response);
   drive_ = rig.send.level_of(spec.send) + Decibels::of_ratio(sent).value();
   if (take.reference != nullptr) {
-    const BlockSpectra reference(*take.reference, hold_, std::gcd(tones_.cycles1, tones_.cycles2));
-    double peak = 0.0;
-    for (const auto& [cycles, f] :
-         {std::pair(tones_.cycles1, tones_.f1), std::pair(tones_.cycles2, tones_.f2)}) {
-      const std::size_t k = cycles;
-      const Line line =
-          reference.mean(k, first_, [&](int b) { return std::arg(reference.at(b, k)); });
-      peak += std::abs(line.mean) / own(f);
-    }
-    drive_ = rig.ret.level_of_peak(peak);
+    const ToneLines reference(*take.reference, hold_, tones_, rig);
+    drive_ = rig.ret.level_of_peak(std::abs(reference.product({1, 0}, first_).mean) +
+                                   std::abs(reference.product({0, 1}, first_).mean));
   }
-}
-
-Hertz TwoToneReading::frequency(ProductIndex p) const {
-  return Hertz(std::abs(p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value()));
-}
-
-std::size_t TwoToneReading::bin(ProductIndex p) const {
-  return static_cast<std::size_t>(std::abs(p.k1 * static_cast<long>(tones_.cycles1) +
-                                           p.k2 * static_cast<long>(tones_.cycles2)));
-}
-
-bool TwoToneReading::in_reach(ProductIndex p) const {
-  constexpr double kRounding = 1.0 + 1e-9;
-  return frequency(p).value() <= kConverterShare * rig_.usable_rate(rate_).value() * kRounding;
-}
-
-double TwoToneReading::turn(ProductIndex p, int block) const {
-  return p.k1 * std::arg(spectra_.at(block, tones_.cycles1)) +
-         p.k2 * std::arg(spectra_.at(block, tones_.cycles2));
-}
-
-Line TwoToneReading::product(ProductIndex p) const {
-  // A product at a negative frequency shows as the conjugate at the positive one.
-  const bool negative = p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value() < 0.0;
-  const double sign = negative ? -1.0 : 1.0;
-  const Line read = p.order() == 1
-                        ? spectra_.tone(bin(p), first_)
-                        : spectra_.mean(bin(p), first_, [&](int b) { return sign * turn(p, b); });
-  Line l = steadied_.time.with_loss(read, frequency(p));
-  // The tones' own turns in the return are given back: their phases were taken as recorded.
-  const auto own = [&](Hertz f) { return rig_.response.ret(f).response; };
-  const std::complex<double> share =
-      own(frequency(p)) *
-      std::polar(1.0, -sign * (p.k1 * std::arg(own(tones_.f1)) + p.k2 * std::arg(own(tones_.f2))));
-  l.mean /= share;
-  l.u /= std::abs(share);
-  if (negative) l.mean = std::conj(l.mean);
-  return l;
 }
 
 std::optional<double> TwoToneReading::alone(ProductIndex p) const {
   if (!alone_spectra_) return std::nullopt;
-  return std::abs(alone_spectra_->at(0, bin(p)) / rig_.response.ret(frequency(p)).response);
+  return std::abs(alone_spectra_->at(0, lines_.bin(p)) /
+                  rig_.response.ret(lines_.frequency(p)).response);
 }
 
 // The other products of that frequency, as a note; "" for none.
 std::string TwoToneReading::falls_on(ProductIndex p) const {
-  if (bin(p) == 0) return "falls on dc";
+  if (lines_.bin(p) == 0) return "falls on dc";
   std::string note;
   for (const ProductIndex q : products_) {
-    if (q == p || ProductIndex{-q.k1, -q.k2} == p || bin(q) != bin(p)) continue;
+    if (q == p || ProductIndex{-q.k1, -q.k2} == p || lines_.bin(q) != lines_.bin(p)) continue;
     note += (note.empty() ? "falls on " : " and ") + name_of(q);
   }
   return note;
@@ -251,16 +204,16 @@ IntermodPoint TwoToneReading::blank(const std::string& name) const {
   p.drive = drive_;
   p.unit = rig_.ret.unit;
   p.product = name;
-  p.blocks = spectra_.blocks() - first_;
+  p.blocks = lines_.spectra().blocks() - first_;
   p.settled_after_s = first_ * static_cast<double>(hold_.block) / rate_.value();
   return p;
 }
 
 TwoToneReading::Part TwoToneReading::single(ProductIndex p, const Reference& reference) const {
   Part part;
-  part.in_reach = in_reach(p);
+  part.in_reach = lines_.in_reach(p);
   part.readable = falls_on(p).empty();
-  if (!part.in_reach || bin(p) == 0) return part;
+  if (!part.in_reach || lines_.bin(p) == 0) return part;
   const Line l = product(p);
   part.read = std::abs(l.mean);
   part.amplitude = without_noise(part.read, l.u);
@@ -268,7 +221,7 @@ TwoToneReading::Part TwoToneReading::single(ProductIndex p, const Reference& ref
   part.dof = l.dof;
   part.noise_threshold = noise_threshold(l.u);
   part.limit = amplitude_upper_limit(part.read, l.u);
-  part.split_u = rig_.response.ret_ratio(frequency(p), tones_.f2).u.value() / kDbPerRelative;
+  part.split_u = lines_.split_u(p);
   part.floor = rig_floor(p, reference);
   if (p.k1 != 0) part.alone = alone(p);  // harmonics of f2 need no f1
   return part;
@@ -426,16 +379,16 @@ ProductPoint TwoToneReading::listed(ProductIndex p, const Reference& reference) 
   point.k1 = p.k1;
   point.k2 = p.k2;
   point.order = p.order();
-  point.frequency_hz = frequency(p).value();
+  point.frequency_hz = lines_.frequency(p).value();
   point.flag = take_flag_;
-  if (!in_reach(p)) {
+  if (!lines_.in_reach(p)) {
     const std::array flags{take_flag_, Flag::alias};
     point.flag = gravest(flags);
     point.note = "past the highest frequency shown";
     return point;
   }
   if (const std::string note = falls_on(p); !note.empty()) point.note = note;
-  if (bin(p) == 0) return point;
+  if (lines_.bin(p) == 0) return point;
   const bool is_tone = p.order() == 1;
   const RelativeReading r =
       is_tone ? relative_tone(p, reference) : relative(single(p, reference), reference);

@@ -16,12 +16,9 @@
 #include <utility>
 #include <vector>
 
-#include "method/coherent.h"
 #include "method/hold.h"
 #include "method/method.h"
-#include "method/products.h"
-#include "method/reading.h"
-#include "method/time_base.h"
+#include "method/tone_lines.h"
 
 namespace kneeprint {
 
@@ -84,9 +81,8 @@ class TwoToneReading {
   /// False when a tone is under the noise: nothing can be referred to it.
   bool has_tones() const { return has_tones_; }
 
-  /// As it left the unit: the return's share of the rig's response is taken out. Phases minus k1
-  /// and k2 times those of the output tones; a product at a negative frequency as it stands there.
-  Line product(ProductIndex p) const;
+  /// As ToneLines::product, of the settled blocks.
+  Line product(ProductIndex p) const { return lines_.product(p, first_); }
 
   /// What products are referred to.
   struct Reference {
@@ -126,10 +122,6 @@ class TwoToneReading {
   RelativeReading relative_tone(ProductIndex p, const Reference& reference) const;
   double rig_floor(ProductIndex p, const Reference& reference) const;
   std::optional<double> alone(ProductIndex p) const;
-  bool in_reach(ProductIndex p) const;
-  Hertz frequency(ProductIndex p) const;
-  std::size_t bin(ProductIndex p) const;
-  double turn(ProductIndex p, int block) const;
   std::string falls_on(ProductIndex p) const;
 
   TonePair pair_;
@@ -138,8 +130,7 @@ class TwoToneReading {
   Hertz rate_;
   CoherentPair tones_;
   HoldLayout hold_, tail_;
-  SteadiedTake steadied_;
-  BlockSpectra spectra_;
+  ToneLines lines_;
   std::optional<BlockSpectra> alone_spectra_;
   std::vector<ProductIndex> products_;
   int first_ = 0;

@@ -14,7 +14,7 @@ namespace {
 bool was_resumed(const Journal& journal, const JournalStop& stop) {
   if (stop.reason != "cancelled" && stop.reason != "device") return false;
   return std::any_of(journal.takes.begin(), journal.takes.end(),
-                     [&](const JournalTake& t) { return t.started > stop.at; });
+                     [&](const JournalTake& t) { return t.rung >= 0 && t.started > stop.at; });
 }
 
 /// The plan's own ends are no accident.

@@ -10,6 +10,7 @@
 #include "curve/upright.h"
 #include "platform/os.h"
 #include "quantity/failure.h"
+#include "run/dim_run.h"
 #include "run/in_order.h"
 
 namespace kneeprint {
@@ -75,6 +76,7 @@ Curves read_takes(const PrintFolder& folder, const Journal& journal, const Plan&
   };
   in_order(takes.size(), workers_for(takes.size()), read,
            [&](Curves&& of_take) { curves.append(std::move(of_take)); });
+  read_dim_takes(folder, journal, curves);
   if (curves.empty()) {
     throw NothingUsable(fmt::format(
         "{}: no take of the ladder was kept, so there is nothing to read", folder.path().string()));

@@ -51,6 +51,28 @@ TEST_CASE("an inverting unit's curve is given upright: even orders turn, odd one
   CHECK(c.harmonics[1].in_phase == 0.5);
 }
 
+TEST_CASE(
+    "products of an inverting unit: even orders turn, odd ones stay; levels become relative") {
+  Curves c;
+  c.levels = {level(997, -40, -50, -1.0)};
+  for (const auto& [k1, k2] : {std::pair(1, 0), {-1, 1}, {2, -1}, {-2, 2}}) {
+    ProductPoint p;
+    p.k1 = k1;
+    p.k2 = k2;
+    p.order = std::abs(k1) + std::abs(k2);
+    p.phase_deg = 0.0;
+    p.level = -60.0;
+    c.products.push_back(p);
+  }
+  make_upright(c, -1);
+  CHECK(*c.products[0].phase_deg == 0.0);
+  CHECK(std::abs(*c.products[1].phase_deg) == 180.0);
+  CHECK(*c.products[2].phase_deg == 0.0);
+  CHECK(std::abs(*c.products[3].phase_deg) == 180.0);
+  make_relative(c, 997);
+  CHECK(*c.products[0].level == doctest::Approx(-10.0));
+}
+
 TEST_CASE("an undeclared reel is read relative to its lowest usable rung") {
   Curves c;
   c.levels = {level(997, -40, -47.3, 1.0), level(997, -20, -28.3, 1.0)};

@@ -52,7 +52,7 @@ folder = WORK / "columns"
 run("measure", "--into", folder, "--plan",
     write_plan(WORK / "columns.json", ladder={"from": -20, "to": -8, "step_db": 12, "unit": "dBFS"},
                descend=True, steps=[{"method": m, **STEPS.get(m, {})} for m in known]),
-    "--rig", "virtual:sigmoid:bias=0.3", "--seed", 3)
+    "--rig", "virtual:sigmoid:bias=0.3", "--rate", 96000, "--seed", 3)
 
 files = sorted((folder / "curves").glob("*.csv"))
 check({f.stem for f in files} == set(columns), "the README has a part for each table, and no other")

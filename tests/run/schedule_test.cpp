@@ -114,3 +114,20 @@ TEST_CASE("tones that the rate cannot carry are refused") {
   p.steps = {{"steady", {Hertz(20000.0)}}};
   CHECK_THROWS_AS(check_rate(p, Hertz(40000.0)), InputError);
 }
+
+TEST_CASE("pairs of a plan are held to what its rate carries; square and sine from 96 kHz on") {
+  Plan p = simple_plan();
+  StepOptions options;
+  options.tones = {Hertz(19000.0), Hertz(20000.0)};
+  p.steps = {{"ccif", {}, 1, options}};
+  check_rate(p, Hertz(44100.0));
+  p.steps[0].options.tones = {Hertz(20000.0), Hertz(21000.0)};
+  CHECK_THROWS_AS(check_rate(p, Hertz(44100.0)), InputError);
+  check_rate(p, Hertz(48000.0));
+  p.steps = {{"modulation", {}, 1, options}};
+  p.steps[0].options.tones = {Hertz(1000.0), Hertz(1000.001)};
+  CHECK_THROWS_AS(check_rate(p, Hertz(48000.0)), InputError);
+  p.steps = {{"square-sine", {}}};
+  check_rate(p, Hertz(96000.0));
+  CHECK_THROWS_AS(check_rate(p, Hertz(48000.0)), InputError);
+}
