@@ -44,12 +44,12 @@ class Follower {
   Follower(const Waveform& response, const HoldLayout& hold, std::span<const std::size_t> tones)
       : response_(response), hold_(hold), rate_(response.rate) {
     for (const std::size_t tone : tones) stride_ = std::gcd(stride_, tone);
-    find_lines(tones);
     const auto around = static_cast<long>(samples_in(kAround, rate_));
     begin_ = std::max(0L, static_cast<long>(hold.first_block) - around);
     end_ = std::min(static_cast<long>(response.samples.size()),
                     static_cast<long>(hold.end()) + around);
     look_from_afar(tones);
+    find_lines(tones);
   }
 
   SteadiedTake run() {
@@ -128,9 +128,28 @@ class Follower {
             std::abs(p.k1 * static_cast<long>(tones[0]) + p.k2 * static_cast<long>(tones[1]))));
       }
     }
+    add_mains();
     std::ranges::sort(lines_);
     lines_.erase(std::unique(lines_.begin(), lines_.end()), lines_.end());
     std::erase_if(lines_, [&](std::size_t k) { return 2 * k >= hold_.block; });
+  }
+
+  // Hum near a low tone turns its phase (and its amplitude) as flutter would: 50 Hz by 41 Hz looks
+  // like 9 Hz. It stands on one side of the tone, flutter on both, so flutter is still followed.
+  // Where the other side may be hum as well (50 and 60 Hz by 55 Hz), nothing tells them apart.
+  void add_mains() {
+    constexpr double kHighestHum = 300.0;
+    const double width = rate_.value() / static_cast<double>(hold_.block);
+    const auto is_hum = [&](double f) {
+      const auto on = [f](double mains) { return std::abs(std::remainder(f, mains)) < 1e-6; };
+      return f > 0.0 && f <= kHighestHum && (on(50.0) || on(60.0));
+    };
+    const auto last = static_cast<std::size_t>(kHighestHum / width + 1e-9);
+    for (std::size_t bin = 1; bin <= last; ++bin) {
+      const double f = width * static_cast<double>(bin);
+      const double mirror = 2.0 * width * static_cast<double>(lead_) - f;
+      if (is_hum(f) && !is_hum(mirror)) lines_.push_back(bin);
+    }
   }
   bool is_line(std::size_t bin) const { return std::ranges::binary_search(lines_, bin); }
 

@@ -249,6 +249,34 @@ TEST_CASE("a take without drift is left bit for bit, in noise as well") {
   CHECK(moved <= 1);
 }
 
+TEST_CASE("hum by a low tone is not taken for flutter, and flutter of that rate still is") {
+  const TakeSpec spec = spec_for("steady", 41.0, -3.0);
+  const Stimulus s = stimulus_of(spec);
+  const double f = s.lowest_tone.value();
+  std::vector<Partial> tones = harmonics(f);
+  // 40 dB under the tone: followed, it would turn the tone by 0.01 rad and take 0.005 dB of H5.
+  tones.push_back({50.0, 0.007, 1.0});
+  tones.push_back({60.0, 0.003, 2.0});
+  const Curves clean = read(spec, record(s, tones, {}, 1e-5), kReel);
+  for (std::size_t k = 0; k < kPeaks.size(); ++k) {
+    const HarmonicPoint& h = clean.harmonics.at(k);
+    CAPTURE(h.order);
+    CHECK(std::abs(decibels(std::hypot(h.in_phase, h.quadrature) / kPeaks[k])) < *h.level_u_db);
+    CHECK(*h.level_u_db < 0.01);
+  }
+  // Flutter of just that rate has a sideband on 50 Hz.
+  const double beat = 50.0 - f;
+  const Recorder recorder{0.0, {{beat, 0.001, 0.0}}};
+  const SteadiedTake steadied =
+      steady_time(record(s, harmonics(f), recorder), s.hold, std::array{cycles_of(f, s)});
+  CHECK(steadied.time.flutter == doctest::Approx(0.001).epsilon(0.1));
+  const Curves c = read(spec, record(s, harmonics(f), recorder), kReel);
+  for (std::size_t k = 0; k < kPeaks.size(); ++k) {
+    const HarmonicPoint& h = c.harmonics.at(k);
+    CHECK(std::abs(decibels(std::hypot(h.in_phase, h.quadrature) / kPeaks[k])) < 0.001);
+  }
+}
+
 TEST_CASE("nothing to follow: silence, noise, no tone, a time that runs away") {
   const TakeSpec spec = spec_for("steady", 997.0, -3.0);
   const Stimulus s = stimulus_of(spec);
