@@ -14,7 +14,12 @@ ToneLines::ToneLines(const Waveform& take, const HoldLayout& hold, const Coheren
       tones_(tones),
       steadied_(in_stimulus_time(take, hold, std::array{tones.cycles1, tones.cycles2}, rig)),
       spectra_(steadied_.or_else(take), hold, std::gcd(tones.cycles1, tones.cycles2),
-               steadied_.emptied) {}
+               steadied_.emptied) {
+  for (int b = 0; b < spectra_.blocks(); ++b) {
+    turns_.push_back(
+        {std::arg(spectra_.at(b, tones.cycles1)), std::arg(spectra_.at(b, tones.cycles2))});
+  }
+}
 
 Hertz ToneLines::frequency(ProductIndex p) const {
   return Hertz(std::abs(p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value()));
@@ -30,18 +35,16 @@ bool ToneLines::in_reach(ProductIndex p) const {
   return frequency(p).value() <= kConverterShare * rig_.usable_rate(rate_).value() * kRounding;
 }
 
-double ToneLines::turn(ProductIndex p, int block) const {
-  return p.k1 * std::arg(spectra_.at(block, tones_.cycles1)) +
-         p.k2 * std::arg(spectra_.at(block, tones_.cycles2));
-}
-
 Line ToneLines::product(ProductIndex p, int first) const {
   // A product at a negative frequency shows as the conjugate at the positive one.
   const bool negative = p.k1 * tones_.f1.value() + p.k2 * tones_.f2.value() < 0.0;
   const double sign = negative ? -1.0 : 1.0;
-  const Line read = p.order() == 1
-                        ? spectra_.tone(bin(p), first)
-                        : spectra_.mean(bin(p), first, [&](int b) { return sign * turn(p, b); });
+  const auto turn = [&](int block) {
+    const auto& [turn1, turn2] = turns_[static_cast<std::size_t>(block)];
+    return sign * (p.k1 * turn1 + p.k2 * turn2);
+  };
+  const Line read =
+      p.order() == 1 ? spectra_.tone(bin(p), first) : spectra_.mean(bin(p), first, turn);
   Line l = steadied_.time.with_loss(read, frequency(p));
   // The tones' own turns in the return are given back: their phases were taken as recorded.
   const auto own = [&](Hertz f) { return rig_.response.ret(f).response; };

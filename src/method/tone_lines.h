@@ -3,6 +3,9 @@
 // block, a recorder's drifting time and the return's share of the rig's response taken out.
 #pragma once
 
+#include <array>
+#include <vector>
+
 #include "method/block_spectra.h"
 #include "method/coherent.h"
 #include "method/products.h"
@@ -33,13 +36,12 @@ class ToneLines {
   double split_u(ProductIndex p) const;
 
  private:
-  double turn(ProductIndex p, int block) const;
-
   const RigView& rig_;
   Hertz rate_;
   CoherentPair tones_;
   SteadiedTake steadied_;
   BlockSpectra spectra_;
+  std::vector<std::array<double, 2>> turns_;  // of both tones, by block
 };
 
 }  // namespace kneeprint

@@ -50,6 +50,22 @@ HeldStimulus held(const TonePair& pair, const TakeSpec& spec, Hertz rate) {
                     pair.f2_alone ? kTailBlocks : 0);
 }
 
+// Lines at multiples of `stride` bins of the first block, as peak amplitudes (line 0 twice its
+// mean). Its periods are summed first: so short a transform costs a tenth of the block's, and the
+// bins between are not asked for.
+std::vector<std::complex<double>> folded_lines(const Waveform& take, const HoldLayout& hold,
+                                               std::size_t stride) {
+  const std::size_t period = hold.block / stride;
+  std::vector<double> sum(period, 0.0);
+  for (std::size_t k = 0; k < stride; ++k) {
+    const double* from = take.samples.data() + hold.first_block + k * period;
+    for (std::size_t n = 0; n < period; ++n) sum[n] += from[n];
+  }
+  std::vector<std::complex<double>> lines = forward_fft(sum);
+  for (auto& z : lines) z *= 2.0 / static_cast<double>(hold.block);
+  return lines;
+}
+
 }  // namespace
 
 // One product, or several taken together.
@@ -124,8 +140,7 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
   if (tail_.blocks > 0) {
     const SteadiedTake alone =
         in_stimulus_time(take.response, tail_, std::array{tones_.cycles2}, rig);
-    alone_spectra_.emplace(alone.or_else(take.response), tail_,
-                           std::gcd(tones_.cycles1, tones_.cycles2));
+    alone_ = folded_lines(alone.or_else(take.response), tail_, alone_stride());
   }
   std::vector<std::size_t> watched;
   for (const ProductIndex p : {ProductIndex{1, 0}, {0, 1}, {1, 1}, {-1, 1}}) {
@@ -160,9 +175,20 @@ TwoToneReading::TwoToneReading(const TonePair& pair, const TakeSpec& spec, const
   }
 }
 
+const Line& TwoToneReading::product(ProductIndex p) const {
+  const auto known = read_.find(p);
+  return known != read_.end() ? known->second
+                              : read_.emplace(p, lines_.product(p, first_)).first->second;
+}
+
+// All products stand on multiples of so many bins.
+std::size_t TwoToneReading::alone_stride() const {
+  return std::gcd(std::gcd(tones_.cycles1, tones_.cycles2), tones_.block);
+}
+
 std::optional<double> TwoToneReading::alone(ProductIndex p) const {
-  if (!alone_spectra_) return std::nullopt;
-  return std::abs(alone_spectra_->at(0, lines_.bin(p)) /
+  if (alone_.empty()) return std::nullopt;
+  return std::abs(alone_[lines_.bin(p) / alone_stride()] /
                   rig_.response.ret(lines_.frequency(p)).response);
 }
 
@@ -191,8 +217,12 @@ TwoToneReading::Reference TwoToneReading::both_tones() const {
 // levels.
 double TwoToneReading::rig_floor(ProductIndex p, const Reference& reference) const {
   if (p.order() < 2) return 0.0;
-  return rig_.floor.at(send_, return_level_, p.order()).value_or(0.0) *
-         over_harmonic(p, pair_.share1(), pair_.share2()) / reference.share;
+  auto floor = floors_.find(p.order());
+  if (floor == floors_.end()) {
+    const auto at_order = rig_.floor.at(send_, return_level_, p.order());
+    floor = floors_.emplace(p.order(), at_order.value_or(0.0)).first;
+  }
+  return floor->second * over_harmonic(p, pair_.share1(), pair_.share2()) / reference.share;
 }
 
 IntermodPoint TwoToneReading::blank(const std::string& name) const {

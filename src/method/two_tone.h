@@ -10,6 +10,7 @@
 
 #include <array>
 #include <complex>
+#include <map>
 #include <optional>
 #include <span>
 #include <string>
@@ -82,7 +83,7 @@ class TwoToneReading {
   bool has_tones() const { return has_tones_; }
 
   /// As ToneLines::product, of the settled blocks.
-  Line product(ProductIndex p) const { return lines_.product(p, first_); }
+  const Line& product(ProductIndex p) const;
 
   /// What products are referred to.
   struct Reference {
@@ -122,6 +123,7 @@ class TwoToneReading {
   RelativeReading relative_tone(ProductIndex p, const Reference& reference) const;
   double rig_floor(ProductIndex p, const Reference& reference) const;
   std::optional<double> alone(ProductIndex p) const;
+  std::size_t alone_stride() const;
   std::string falls_on(ProductIndex p) const;
 
   TonePair pair_;
@@ -131,8 +133,11 @@ class TwoToneReading {
   CoherentPair tones_;
   HoldLayout hold_, tail_;
   ToneLines lines_;
-  std::optional<BlockSpectra> alone_spectra_;
+  std::vector<std::complex<double>> alone_;  // f2 alone: lines at multiples of the stride, as peaks
   std::vector<ProductIndex> products_;
+  // Kept once read: rows and lists ask for the same ones again and again.
+  mutable std::map<ProductIndex, Line> read_;
+  mutable std::map<int, double> floors_;  // the rig's, by order
   int first_ = 0;
   Flag take_flag_ = Flag::none;
   Line tone1_, tone2_;

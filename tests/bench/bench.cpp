@@ -19,6 +19,7 @@
 #include "bench/takes.h"
 #include "method/coherent.h"
 #include "method/method.h"
+#include "platform/os.h"
 
 namespace {
 
@@ -26,19 +27,22 @@ using namespace kneeprint;
 
 constexpr Hertz kRate{96000.0};
 
-// A workload is a method on takes over a range of drives. To add one (a sweep, say), add a row here
-// and a reading of its takes to both peers.
+// A workload is a method on takes over a range of drives. To add one, add a row here and a reading
+// of its takes to both peers.
 struct Workload {
   std::string_view name;
   std::string_view method;
   Hertz asked;
   int takes;
   std::array<Hertz, 2> tones;  // {0, 0}: the coherent tone nearest to `asked`
+  Seconds sweep;               // its duration; 0: none
 };
+constexpr std::array<Hertz, 2> kNone{Hertz(0.0), Hertz(0.0)};
 constexpr std::array kWorkloads{
-    Workload{"steady", "steady", Hertz(997.0), 60, {Hertz(0.0), Hertz(0.0)}},
-    Workload{"smpte", "smpte", Hertz(0.0), 40, {Hertz(60.0), Hertz(7000.0)}},
-    Workload{"ccif", "ccif", Hertz(0.0), 40, {Hertz(19000.0), Hertz(20000.0)}},
+    Workload{"steady", "steady", Hertz(997.0), 60, kNone, Seconds(0.0)},
+    Workload{"smpte", "smpte", Hertz(0.0), 40, {Hertz(60.0), Hertz(7000.0)}, Seconds(0.0)},
+    Workload{"ccif", "ccif", Hertz(0.0), 40, {Hertz(19000.0), Hertz(20000.0)}, Seconds(0.0)},
+    Workload{"sweep", "sweep", Hertz(0.0), 1, kNone, Seconds(20.0)},
 };
 
 const Workload& workload_named(std::string_view name) {
@@ -48,7 +52,10 @@ const Workload& workload_named(std::string_view name) {
   throw std::runtime_error(fmt::format("no workload \"{}\"", name));
 }
 
-// Three blocks of 0.3 s: with its ramps a take lasts a second.
+// As method/swept.cpp plays it.
+constexpr Hertz kSweepStart{10.0}, kSweepStop{0.49 * kRate.value()};
+
+// Three blocks of 0.3 s: with its ramps a take lasts a second. Three repeats of a sweep.
 TakeSpec spec_of(const Workload& w, double send_dbfs) {
   TakeSpec spec;
   spec.method = w.method;
@@ -57,10 +64,13 @@ TakeSpec spec_of(const Workload& w, double send_dbfs) {
   spec.settings.block = Seconds(0.3);
   spec.settings.blocks = 3;
   spec.hold_blocks = 3;
+  if (w.sweep.value() > 0.0) spec.options.duration = w.sweep;
   return spec;
 }
 
-double send_of(const Workload& w, int take) { return -40.0 + 39.0 * take / (w.takes - 1); }
+double send_of(const Workload& w, int take) {
+  return w.takes == 1 ? -12.0 : -40.0 + 39.0 * take / (w.takes - 1);
+}
 
 // A lopsided curve and converter noise: high orders vanish in the noise at low drives.
 void respond(Waveform& wave, unsigned seed) {
@@ -84,6 +94,7 @@ void make(const std::filesystem::path& folder, const Workload& w) {
           std::llround(f.value() * static_cast<double>(hold) / kRate.value()));
     };
     const bool one_tone = w.tones[1].value() == 0.0;
+    const bool sweep = w.sweep.value() > 0.0;
     header = {w.takes,
               static_cast<std::int64_t>(stimulus.wave.samples.size()),
               static_cast<std::int64_t>(stimulus.hold.first_block),
@@ -91,7 +102,9 @@ void make(const std::filesystem::path& folder, const Workload& w) {
               static_cast<std::int64_t>(kRate.value()),
               cycles(one_tone ? stimulus.lowest_tone : w.tones[0]),
               one_tone ? 0 : cycles(w.tones[1]),
-              stimulus.hold.blocks};
+              stimulus.hold.blocks,
+              sweep ? kSweepStart.value() : 0.0,
+              sweep ? w.sweep.value() / std::log(kSweepStop / kSweepStart) : 0.0};
     sends.push_back(spec.send.value());
     samples.insert(samples.end(), stimulus.wave.samples.begin(), stimulus.wave.samples.end());
   }
@@ -145,6 +158,7 @@ RigView rig() {
 }
 
 void time(const std::filesystem::path& folder, const Workload& w, int times) {
+  os::keep_freed_memory();  // as `kneeprint analyse` does
   const Takes takes = load(folder, w);
   const Method& method = *find_method(w.method);
   const RigView view = rig();
@@ -156,7 +170,8 @@ void time(const std::filesystem::path& folder, const Workload& w, int times) {
       method.read(spec_of(w, takes.sends[i]), {takes.waves[i]}, view, curves);
     }
     const double spent = static_cast<double>(std::clock() - begin) / CLOCKS_PER_SEC;
-    figures = curves.harmonics.size() + curves.intermods.size() + curves.products.size();
+    figures = curves.harmonics.size() + curves.products.size();
+    if (figures == 0) figures = curves.responses.size();
     fmt::print("{} {:.9f}\n", k == 0 ? "first" : "warm", spent);
   }
   fmt::print("figures {}\n", figures);

@@ -15,7 +15,7 @@
 
 #include "takes.h"
 
-enum { ORDERS = 10, PRODUCT_ORDER = 5 };
+enum { ORDERS = 10, PRODUCT_ORDER = 5, WINDOW = 16384 };
 static const double kLow = 20.0, kHigh = 20000.0, kReach = 0.45;
 
 typedef struct {
@@ -103,37 +103,110 @@ static void read_two_tone(const TakesHeader* h, fftw_complex* spectrum, Figures*
   }
 }
 
+// One plan per length, in and out of arrays of its own.
+typedef struct {
+  int size;
+  double* in;
+  fftw_complex* out;
+  fftw_plan forward, back;
+} Transform;
+
+static Transform transform(int size, int both, unsigned flags) {
+  Transform t = {size, fftw_alloc_real((size_t)size), fftw_alloc_complex((size_t)(size / 2 + 1)),
+                 NULL, NULL};
+  t.forward = fftw_plan_dft_r2c_1d(size, t.in, t.out, flags);
+  if (both) t.back = fftw_plan_dft_c2r_1d(size, t.out, t.in, flags);
+  if (!t.forward || (both && !t.back)) fail("the wisdom is for another length");
+  return t;
+}
+
+// One over the spectrum of the synchronised sweep (stationary phase: Novak, Lotton & Simon 2015).
+static fftw_complex* inverse_of(const TakesHeader* h, int size) {
+  fftw_complex* inverse = fftw_alloc_complex((size_t)(size / 2 + 1));
+  for (int k = 0; k <= size / 2; ++k) {
+    const double f = (double)k * (double)h->rate / size;
+    const double s = 2.0 * M_PI * f * h->growth;
+    inverse[k] = f < 0.5 * h->start ? 0.0
+                                    : 2.0 / (double)h->rate * sqrt(f / h->growth) *
+                                          cexp(-I * (s * (1.0 - log(f / h->start)) + M_PI / 4.0));
+  }
+  return inverse;
+}
+
+// The mean of the repeats through the inverse, then a window about the instant of each order.
+static double read_sweep(const TakesHeader* h, const double* take, const Transform* whole,
+                         const Transform* part, const fftw_complex* inverse, const double* window,
+                         long* figures) {
+  double sum = 0.0;
+  for (int i = 0; i < whole->size; ++i) {
+    double x = 0.0;
+    for (long b = 0; b < h->blocks; ++b) x += take[b * whole->size + i];
+    whole->in[i] = x / (double)h->blocks;
+  }
+  fftw_execute(whole->forward);
+  for (int k = 0; k <= whole->size / 2; ++k) {
+    const double complex a = whole->out[k], b = inverse[k];
+    whole->out[k] =
+        creal(a) * creal(b) - cimag(a) * cimag(b) + I * (creal(a) * cimag(b) + cimag(a) * creal(b));
+  }
+  fftw_execute(whole->back);
+  for (int n = 1; n <= ORDERS; ++n) {
+    const long instant = lround(-h->growth * log(n) * (double)h->rate) - WINDOW / 2;
+    for (long i = 0; i < WINDOW; ++i) {
+      const long at = ((instant + i) % whole->size + whole->size) % whole->size;
+      part->in[i] = whole->in[at] / whole->size * window[i];
+    }
+    fftw_execute(part->forward);
+    for (int k = 0; k <= WINDOW / 2; ++k) sum += sqrt(power(part->out[k]));
+    *figures += WINDOW / 2 + 1;
+  }
+  return sum;
+}
+
 int main(int argc, char** argv) {
   const int plans = argc == 5 && strcmp(argv[1], "plan") == 0;
   const int times = (argc == 5 || argc == 6) && strcmp(argv[1], "time") == 0 ? atoi(argv[4]) : 0;
   if (!plans && times < 1) fail("plan DIR WORKLOAD WISDOM | time DIR WORKLOAD TIMES [WISDOM]");
   const Takes t = load(argv[2], argv[3]);
-  const int size = (int)t.h.hold;
-  double* in = fftw_malloc(sizeof(double) * (size_t)size);
-  fftw_complex* out = fftw_malloc(sizeof(fftw_complex) * (size_t)(size / 2 + 1));
+  const int sweep = t.h.start > 0.0;
+  const int size = (int)(sweep ? t.h.hold / t.h.blocks : t.h.hold);
   if (plans) {
-    fftw_plan_dft_r2c_1d(size, in, out, FFTW_MEASURE);
+    transform(size, sweep, FFTW_MEASURE);
+    if (sweep) transform(WINDOW, 0, FFTW_MEASURE);
     return fftw_export_wisdom_to_filename(argv[4]) ? 0 : 1;
   }
   const unsigned flags = argc == 6 ? FFTW_MEASURE | FFTW_WISDOM_ONLY : FFTW_ESTIMATE;
   if (argc == 6 && !fftw_import_wisdom_from_filename(argv[5])) fail("no wisdom there");
+  double window[WINDOW];
+  for (int i = 0; i < WINDOW; ++i) window[i] = 0.5 - 0.5 * cos(2.0 * M_PI * i / (WINDOW - 1));
 
-  fftw_plan plan = NULL;
+  Transform whole = {0}, part = {0};
+  fftw_complex* inverse = NULL;
   double sum = 0.0;
   long figures = 0;
   for (int r = 0; r <= times; ++r) {
     const double begin = now();
-    if (!plan) plan = fftw_plan_dft_r2c_1d(size, in, out, flags);
-    if (!plan) fail("the wisdom is for another length");
+    if (r == 0) {
+      whole = transform(size, sweep, flags);
+      if (sweep) {
+        part = transform(WINDOW, 0, flags);
+        inverse = inverse_of(&t.h, size);
+      }
+    }
     figures = 0;
     for (long k = 0; k < t.h.takes; ++k) {
+      const double* take = t.samples + k * t.h.frames + t.h.first;
+      if (sweep) {
+        sum += read_sweep(&t.h, take, &whole, &part, inverse, window, &figures);
+        continue;
+      }
       Figures f;
-      memcpy(in, t.samples + k * t.h.frames + t.h.first, sizeof(double) * (size_t)size);
-      fftw_execute(plan);
+      memcpy(whole.in, take, sizeof(double) * (size_t)size);
+      fftw_execute(whole.forward);
       if (t.h.cycles2 == 0) {
-        read_steady(&t.h, out, &f);
+        read_steady(&t.h, whole.out, &f);
       } else {
-        read_two_tone(&t.h, out, &f);
+        read_two_tone(&t.h, whole.out, &f);
       }
       sum += f.thd + cabs(f.line[f.lines - 1]);
       figures += f.lines;

@@ -12,13 +12,15 @@ import scipy.fft
 
 ORDERS, PRODUCT_ORDER = 10, 5
 LOW, HIGH, REACH = 20.0, 20000.0, 0.45
+WINDOW = 16384  # samples about the instant of each order of a sweep
 
 
 def load(folder, workload):
     raw = (pathlib.Path(folder) / f"{workload}.takes").read_bytes()
-    takes, frames, first, hold, rate, c1, c2, _ = np.frombuffer(raw, np.int64, 8)
-    samples = np.frombuffer(raw, np.float64, offset=64 + 8 * takes).reshape(takes, frames)
-    return samples, int(first), int(hold), int(rate), int(c1), int(c2)
+    takes, frames, first, hold, rate, c1, c2, blocks = map(int, np.frombuffer(raw, np.int64, 8))
+    start, growth = np.frombuffer(raw, np.float64, 2, offset=64)
+    samples = np.frombuffer(raw, np.float64, offset=80 + 8 * takes).reshape(takes, frames)
+    return samples, first, hold, rate, c1, c2, blocks, start, growth
 
 
 def steady(spectra, hold, rate, c):
@@ -54,7 +56,27 @@ def two_tone(spectra, hold, rate, c1, c2):
     return lines, np.hypot(s, t) / u
 
 
-samples, first, hold, rate, c1, c2 = load(*sys.argv[1:3])
+class Sweep:
+    """One over the synchronised sweep's spectrum (stationary phase: Novak, Lotton & Simon 2015), made once."""
+
+    def __init__(self, fft, size, rate, start, growth):
+        self.fft, self.size = fft, size
+        f = np.fft.rfftfreq(size, 1 / rate)
+        f[0] = 1.0
+        s = 2 * np.pi * f * growth
+        self.inverse = 2 / rate * np.sqrt(f / growth) * np.exp(-1j * (s * (1 - np.log(f / start)) + np.pi / 4))
+        self.inverse[f < start / 2] = 0.0
+        self.window = np.hanning(WINDOW)
+        self.instants = np.round(-growth * np.log(np.arange(1, ORDERS + 1)) * rate).astype(int)
+
+    def __call__(self, repeats):
+        impulse = self.fft.irfft(self.fft.rfft(repeats.mean(axis=0)) * self.inverse, self.size)
+        around = np.arange(-WINDOW // 2, WINDOW // 2)
+        cut = impulse[(self.instants[:, np.newaxis] + around) % self.size]
+        return np.abs(self.fft.rfft(cut * self.window, axis=1))
+
+
+samples, first, hold, rate, c1, c2, blocks, start, growth = load(*sys.argv[1:3])
 times, way = int(sys.argv[3]), sys.argv[4]
 held = samples[:, first:first + hold]
 
@@ -63,9 +85,14 @@ def read(spectra):
     return two_tone(spectra, hold, rate, c1, c2) if c2 else steady(spectra, hold, rate, c1)
 
 
+sweep = None
 for r in range(times + 1):
     begin = time.process_time()
-    if way == "numpy":
+    if start > 0:
+        fft, size = (np.fft if way == "numpy" else scipy.fft), hold // blocks
+        sweep = sweep or Sweep(fft, size, rate, start, growth)
+        figures = sum(sweep(take.reshape(blocks, size)).size for take in held)
+    elif way == "numpy":
         results = [read(np.fft.rfft(take)[np.newaxis]) for take in held]
         figures = sum(x[0].size for x in results)
     else:

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The takes that all contestants read: one file per workload, written by `bench make`, laid out so
-// that C, C++ and numpy read it alike. Eight 64-bit integers (TakesHeader), one double per take
-// (send level, dBFS), then the takes one after another as doubles.
+// that C, C++ and numpy read it alike. The header below, one double per take (send level,
+// dBFS), then the takes one after another as doubles.
 #ifndef KNEEPRINT_BENCH_TAKES_H
 #define KNEEPRINT_BENCH_TAKES_H
 
@@ -15,7 +15,9 @@ typedef struct {
   int64_t rate;     // Hz
   int64_t cycles1;  // of the (first) tone in the steady part
   int64_t cycles2;  // of the second tone; 0: a single one
-  int64_t blocks;   // that Kneeprint divides the steady part into
+  int64_t blocks;   // that Kneeprint divides the steady part into; of a sweep: its repeats
+  double start;     // of a sweep: lowest frequency in Hz; 0: no sweep
+  double growth;    // of a sweep: seconds in which its frequency grows by e
 } TakesHeader;
 
 #endif

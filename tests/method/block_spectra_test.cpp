@@ -79,7 +79,7 @@ TEST_CASE("the noise around a line leaves the lines of the stride out") {
 
 TEST_CASE("the upper limit of an amplitude is the non-centrality that Boost finds, to 1e-12") {
   const double least = noise_threshold(1.0);
-  for (double read = 0.0; read < 4.0; read += 0.01) {
+  for (double read = 0.0; read < 120.0; read = 1.05 * read + 0.01) {
     CAPTURE(read);
     double expected = least;
     // At or under the 2.5 % point of noise alone no amplitude satisfies the condition.
@@ -89,5 +89,17 @@ TEST_CASE("the upper limit of an amplitude is the non-centrality that Boost find
                               2.0, read * read, 0.025)));
     }
     CHECK(amplitude_upper_limit(3.0 * read, 3.0) == doctest::Approx(3.0 * expected).epsilon(1e-12));
+  }
+}
+
+TEST_CASE("far above the noise the upper limit is the normal distribution's") {
+  // A Rice variate of amplitude nu has the mean nu + 1 / (2 nu) and nearly unit variance (Rice
+  // 1944, from memory), so 2.5 % lie below nu - 1.9599640 + 1 / (2 nu); the next term is of order 1
+  // / nu^2.
+  for (const double read : {1e3, 1e5, 1e9, 1e13}) {
+    CAPTURE(read);
+    const double expected = read + 1.959963984540054 - 0.5 / read;
+    CHECK(std::abs(amplitude_upper_limit(read, 1.0) - expected) <
+          2.0 / (read * read) + 4e-16 * read);
   }
 }
