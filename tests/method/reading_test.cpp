@@ -26,6 +26,14 @@ TEST_CASE("what noise alone shows: the Rayleigh distribution's 95 %") {
   CHECK(std::abs(noise_threshold(u) - 4.996442296e-5) < 1e-13);
 }
 
+TEST_CASE("noise taken off an amplitude") {
+  // E |A + n|^2 = A^2 + 2 u^2; the median of a Rice variate is near sqrt(A^2 + u^2) (3.1623 for A =
+  // 3): u^2 taken off leaves A.
+  CHECK(without_noise(std::sqrt(10.0), 1.0) == doctest::Approx(3.0).epsilon(1e-14));
+  CHECK(without_noise(1.0, 2.0) == 0.0);
+  CHECK(without_noise(1.0, 0.0) == 1.0);
+}
+
 TEST_CASE("an amplitude's upper limit would read lower in 2.5 % of cases") {
   // Rice 1944: density r exp(-(r^2 + a^2) / 2) I0(r a) for u = 1, here integrated by Simpson's
   // rule.
@@ -44,7 +52,12 @@ TEST_CASE("an amplitude's upper limit would read lower in 2.5 % of cases") {
     CAPTURE(read);
     const double limit = amplitude_upper_limit(read * kU, kU) / kU;
     CHECK(limit >= noise_threshold(1.0));
-    CHECK(std::abs(below(read, limit) - 0.025) < 5e-4);
+    CHECK(std::abs(below(read, limit) - 0.025) < 1e-4);
+  }
+  // Far above the noise a Rice variate is normal about sqrt(a^2 + 1): 1.96 u, on either side of the
+  // place where the reading passes to that form.
+  for (const double read : {900.0, 1100.0}) {
+    CHECK(std::abs(amplitude_upper_limit(read, 1.0) - read - 1.959964) < 1e-3);
   }
   // So little that a limit from it alone would lie under what noise shows: that is stated instead.
   CHECK(amplitude_upper_limit(0.1 * kU, kU) == doctest::Approx(noise_threshold(kU)));
