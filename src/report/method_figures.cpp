@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 #include <map>
 #include <set>
 
@@ -16,6 +17,21 @@ namespace {
 
 constexpr int kHighestOrder = 3;        ///< of the swept figures: more would hide one another
 constexpr std::size_t kMostDrives = 5;  ///< lines of one figure
+
+/// Lifts the pen: no line is drawn across what stands under the noise.
+FigurePoint gap_at(double x) {
+  FigurePoint p;
+  p.x = x;
+  p.y = std::numeric_limits<double>::quiet_NaN();
+  return p;
+}
+
+/// A line of which less than half stands above the noise would show chance finds.
+bool is_mostly_seen(const Series& s) {
+  const auto seen = std::count_if(s.points.begin(), s.points.end(),
+                                  [](const FigurePoint& p) { return std::isfinite(p.y); });
+  return 2 * seen >= static_cast<long>(s.points.size()) && seen > 1;
+}
 
 FigurePoint point_of(double x, double y, const Cell& u, Flag flag) {
   FigurePoint p;
@@ -69,13 +85,17 @@ Figure swept_figure(const ReportData& data, int order) {
     s.colour = colour++;
     for (const ResponsePoint& p : data.curves.responses) {
       if (p.method != "sweep" || p.order != order || p.drive != drive || !p.magnitude_db) continue;
-      if (p.flag == Flag::noise || p.flag == Flag::alias) continue;
+      if (p.flag == Flag::alias) continue;
+      if (p.flag == Flag::noise) {
+        s.points.push_back(gap_at(p.frequency_hz));
+        continue;
+      }
       const auto reference = fundamental.find({drive, p.frequency_hz});
       if (order > 1 && reference == fundamental.end()) continue;
       const double y = order == 1 ? *p.magnitude_db : *p.magnitude_db - reference->second;
       s.points.push_back(point_of(p.frequency_hz, y, {}, p.flag));
     }
-    if (!s.points.empty()) f.series.push_back(std::move(s));
+    if (is_mostly_seen(s)) f.series.push_back(std::move(s));
   }
   f.caption =
       order == 1
@@ -104,7 +124,11 @@ Figure glide_figure(const ReportData& data) {
       s.label = fmt::format("H{} {}", order, direction);
       for (const GlidePoint& p : data.curves.glides) {
         if (p.order != order || p.direction != direction || !p.relative_db) continue;
-        if (p.flag == Flag::noise || p.flag == Flag::alias) continue;
+        if (p.flag == Flag::alias) continue;
+        if (p.flag == Flag::noise) {
+          s.points.push_back(gap_at(p.drive));
+          continue;
+        }
         s.points.push_back(point_of(p.drive, *p.relative_db, {}, p.flag));
       }
       std::sort(s.points.begin(), s.points.end(), [](auto& a, auto& b) { return a.x < b.x; });

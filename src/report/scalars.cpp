@@ -24,6 +24,14 @@ std::string value_text(const ScalarPoint& p) {
   return with_u(p.value, p.expanded_u, 2);
 }
 
+/// In dB: finer than 0.005 dB is no news to a reader of tables, and stands in scalars.csv.
+std::string decibel_text(const ScalarPoint& p) {
+  constexpr double kFinest = 0.005;
+  ScalarPoint coarse = p;
+  if (coarse.expanded_u) coarse.expanded_u = std::max(*coarse.expanded_u, kFinest);
+  return value_text(coarse);
+}
+
 const ScalarPoint* find(const Curves& curves, const std::string& method, const std::string& figure,
                         const std::string& state) {
   for (const ScalarPoint& p : curves.scalars) {
@@ -87,7 +95,7 @@ Table multitone_table(const ReportData& data) {
     std::vector<std::string> row{fixed_text(drive, 2)};
     for (const auto& [id, ignored] : kFigures) {
       const auto at = figures.find(id);
-      row.push_back(at == figures.end() ? kDash : value_text(*at->second));
+      row.push_back(at == figures.end() ? kDash : decibel_text(*at->second));
     }
     t.rows.push_back(std::move(row));
   }

@@ -40,6 +40,14 @@ Section definitions_section() {
        "for its degrees of freedom (GUM, JCGM 100). It holds the scatter of the blocks, the rig "
        "floor as a term of known size and unknown phase, and for levels the calibration. Setting "
        "up again is not in it: repeatability only."},
+      {"multitone",
+       "31 tones with the sine's peak. Distortion is what repeats from block to block and is no "
+       "tone; products of even and of odd order fall on different bins. Fill: the share of bands "
+       "of "
+       "1 ERB whose distortion stands above the threshold that the tones mask, by a simple model."},
+      {"noise and hum",
+       "At rest, and with a low tone that keeps the unit at work; 20 Hz to 20 kHz, unweighted, "
+       "A-weighted (IEC 61672-1), quasi-peak (ITU-R BS.468-4); lines at mains multiples apart."},
       {"floor", "Flag: at or under the rig floor, what a cable in place of the unit shows."},
       {"noise (flag)", "Under the noise at this integration time: an upper limit, not a value."},
       {"alias", "Flag: beyond what the sample rate can show."},
