@@ -4,6 +4,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <compare>
 #include <map>
 #include <set>
 
@@ -210,24 +211,58 @@ Figure compression_figure(const ReportData& data) {
 
 // --- two tones
 
-Figure two_tone_figure(const ReportData& data, const std::string& method,
-                       const std::vector<std::string>& products, const std::string& title,
-                       const std::string& definition) {
-  const HoldoutFamily* predicted = best_holdout(data);
-  Figure f = start(method, title, "", data, "");
+struct TonesPlayed {
+  double f1, f2, ratio;
+  friend auto operator<=>(const TonesPlayed&, const TonesPlayed&) = default;
+};
+
+TonesPlayed tones_of(const IntermodPoint& p) { return {p.f1_hz, p.f2_hz, p.ratio}; }
+
+struct TwoToneKind {
+  std::string method;
+  std::vector<std::string> products;
+  std::string title, reference, definition;
+};
+
+const std::vector<TwoToneKind>& two_tone_kinds() {
+  static const std::string kUpper = "relative to the upper tone, %";
+  static const std::string kBoth = "relative to the sum of both tones, %";
+  static const std::string kSidebands =
+      "m2 and m3: arithmetic sum of the pair of sidebands of second and third order over the upper "
+      "tone (IEC 60268-3).";
+  static const std::vector<TwoToneKind> kinds{
+      {"smpte", {"m2", "m3"}, "Modulation distortion", kUpper, kSidebands},
+      {"din", {"m2", "m3"}, "Modulation distortion", kUpper, kSidebands},
+      {"modulation", {"m2", "m3"}, "Modulation distortion", kUpper, kSidebands},
+      {"ccif",
+       {"d2", "d3"},
+       "Difference-frequency distortion",
+       kBoth,
+       "d2 and d3: products of second and third order over the arithmetic sum of both tones (IEC "
+       "60268-3)."},
+      {"tdfd",
+       {"total"},
+       "Total difference-frequency distortion",
+       kBoth,
+       "Root sum of squares of the lower products of second and third order, over the arithmetic "
+       "sum of both tones (IEC 60268-3)."}};
+  return kinds;
+}
+
+Figure two_tone_figure(const ReportData& data, const TwoToneKind& kind, const TonesPlayed& tones,
+                       const std::string& id, const HoldoutFamily* predicted) {
+  const std::string& method = kind.method;
+  Figure f = start(id, kind.title, "", data, "");
   f.y.logarithmic = true;
-  double f1 = 0.0, f2 = 0.0;
   FloorByDrive floor;
   int colour = 0;
-  for (const auto& product : products) {
+  for (const auto& product : kind.products) {
     Series measured;
     measured.style = SeriesStyle::markers;
     measured.label = product + " measured";
     measured.colour = colour;
     for (const auto& p : data.curves.intermods) {
-      if (p.method != method || p.product != product) continue;
-      f1 = p.f1_hz;
-      f2 = p.f2_hz;
+      if (p.method != method || p.product != product || tones_of(p) != tones) continue;
       if (p.floor_db) raise_floor(floor, p.drive, percent_of_db(*p.floor_db));
       if (!p.db) continue;
       FigurePoint point = percent_point(p.drive, percent_of_db(*p.db), {}, p.flag);
@@ -251,6 +286,10 @@ Figure two_tone_figure(const ReportData& data, const std::string& method,
       }
       std::sort(line.points.begin(), line.points.end(),
                 [](const auto& a, const auto& b) { return a.x < b.x; });
+      // A curve without memory has the same products with every pair: one point a drive.
+      line.points.erase(std::unique(line.points.begin(), line.points.end(),
+                                    [](const auto& a, const auto& b) { return a.x == b.x; }),
+                        line.points.end());
     }
     // A prediction far under everything measured would stretch the axis for nothing.
     double least = INFINITY;
@@ -260,11 +299,10 @@ Figure two_tone_figure(const ReportData& data, const std::string& method,
     if (!measured.points.empty()) f.series.push_back(std::move(measured));
   }
   add_floor(f, floor);
-  f.note = fmt::format("{} · {} and {} · {}", unit_label(data), frequency_text(f1),
-                       frequency_text(f2), rig_line(data.rig));
-  f.y.label =
-      method == "ccif" ? "relative to the sum of both tones, %" : "relative to the upper tone, %";
-  f.caption = definition +
+  f.note = fmt::format("{} · {} and {}, {}:1 · {}", unit_label(data), frequency_text(tones.f1),
+                       frequency_text(tones.f2), short_text(tones.ratio), rig_line(data.rig));
+  f.y.label = kind.reference;
+  f.caption = kind.definition +
               " Drive is that of the sine with the same peak. Bars: 95 % interval where visible.";
   if (predicted)
     f.caption += fmt::format(
@@ -273,6 +311,28 @@ Figure two_tone_figure(const ReportData& data, const std::string& method,
             ? "; no hold-out test here, since the unit depends on frequency"
             : "");
   return f;
+}
+
+// One figure for each pair and ratio that a method played.
+std::vector<Figure> two_tone_figures(const ReportData& data) {
+  std::vector<Figure> figures;
+  for (const TwoToneKind& kind : two_tone_kinds()) {
+    std::set<TonesPlayed> played;
+    std::set<double> ratios;
+    for (const IntermodPoint& p : data.curves.intermods) {
+      if (p.method != kind.method) continue;
+      played.insert(tones_of(p));
+      ratios.insert(p.ratio);
+    }
+    // Predictions are kept without their ratio: with several they cannot be told apart.
+    const HoldoutFamily* predicted = ratios.size() == 1 ? best_holdout(data) : nullptr;
+    int count = 0;
+    for (const TonesPlayed& tones : played) {
+      const std::string id = ++count == 1 ? kind.method : fmt::format("{}-{}", kind.method, count);
+      figures.push_back(two_tone_figure(data, kind, tones, id, predicted));
+    }
+  }
+  return figures;
 }
 
 // --- transfer curve
@@ -418,12 +478,7 @@ std::vector<Figure> report_figures(const ReportData& data) {
   add(harmonics_figure(data, fit_hz));
   add(thd_figure(data, fit_hz));
   add(compression_figure(data));
-  add(two_tone_figure(data, "smpte", {"m2", "m3"}, "Modulation distortion",
-                      "m2 and m3: arithmetic sum of the pair of sidebands of second and third "
-                      "order over the upper tone (IEC 60268-3)."));
-  add(two_tone_figure(data, "ccif", {"d2", "d3"}, "Difference-frequency distortion",
-                      "d2 and d3: products of second and third order over the arithmetic sum of "
-                      "both tones (IEC 60268-3)."));
+  for (Figure& f : two_tone_figures(data)) add(std::move(f));
   if (data.model) add(transfer_figure(data, fit_hz));
   add(balance_figure(data));
   for (Figure& f : method_figures(data)) figures.push_back(std::move(f));

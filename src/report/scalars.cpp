@@ -108,6 +108,46 @@ Table multitone_table(const ReportData& data) {
   return t;
 }
 
+Table dynamic_table(const ReportData& data) {
+  Table t;
+  t.caption =
+      "Square of 3.15 kHz with sine of 15 kHz, 4:1: root sum of squares of nine products over the "
+      "sine. Through audio converters the square is band-limited and its edges are only so steep a "
+      "share of the standard's; DIM is the name of an external generator's signal alone. ± at 95 "
+      "%.";
+  t.heads = {"signal",         "drive, " + drive_unit(data),
+             "products, %",    "slope over DIM 30's",
+             "over DIM 100's", "band limit, kHz"};
+  for (const IntermodPoint& p : data.curves.intermods) {
+    if (p.product != "square-sine") continue;
+    const auto fact = [&](const char* figure, const char* state, double scale,
+                          int digits) -> std::string {
+      for (const ScalarPoint& s : data.curves.scalars) {
+        if (s.method == p.method && s.figure == figure && s.state == state && s.drive == p.drive) {
+          return s.value ? fixed_text(*s.value * scale, digits) : kDash;
+        }
+      }
+      return kDash;
+    };
+    // To first order in a small uncertainty, u(r) / r = u in dB / 8.686.
+    const Cell u = p.percent && p.expanded_u_db
+                       ? Cell(*p.percent * *p.expanded_u_db * std::log(10.0) / 20.0)
+                       : Cell();
+    t.rows.push_back({"square and sine", fixed_text(p.drive, 2),
+                      !p.percent              ? kDash
+                      : p.flag == Flag::noise ? "< " + short_text(*p.percent, 3)
+                                              : with_u(p.percent, u, 2),
+                      fact("slope-fraction", "dim-30", 1.0, 2),
+                      fact("slope-fraction", "dim-100", 1.0, 2), fact("band-limit", "-", 1e-3, 1)});
+  }
+  for (const auto& [method, title] : {std::pair("dim-30", "DIM 30, external generator"),
+                                      std::pair("dim-100", "DIM 100, external generator")}) {
+    const ScalarPoint* p = find(data.curves, method, "dim", "-");
+    if (p != nullptr) t.rows.push_back({title, kDash, value_text(*p), kDash, kDash, kDash});
+  }
+  return t;
+}
+
 Table memory_table(const ReportData& data) {
   static const Names kFigures{{"gain-drift", "range of the gain of a reference tone over the run"},
                               {"ladder-loop-gain", "ladder down less up: gain"},
@@ -194,7 +234,7 @@ Section noise_section(const ReportData& data) {
 }
 
 Section programme_section(const ReportData& data) {
-  return section_of("Under programme-like drive", {multitone_table(data)});
+  return section_of("Under programme-like drive", {multitone_table(data), dynamic_table(data)});
 }
 
 Section memory_section(const ReportData& data) {

@@ -201,6 +201,75 @@ TEST_CASE("figures come in order, as far as the data reach") {
   }
 }
 
+TEST_CASE("each pair of tones has a figure of its own") {
+  ReportData d = clean();
+  const std::vector<IntermodPoint> rows = d.curves.intermods;
+  for (IntermodPoint p : rows) {
+    if (p.method != "ccif") continue;
+    p.f1_hz = 14000.0;
+    p.f2_hz = 15000.0;
+    if (p.db) *p.db += 20.0;
+    d.curves.intermods.push_back(p);
+  }
+  std::vector<const Figure*> pairs;
+  const std::vector<Figure> figures = report_figures(d);
+  for (const Figure& f : figures) {
+    if (f.id.starts_with("ccif")) pairs.push_back(&f);
+  }
+  REQUIRE(pairs.size() == 2);
+  CHECK(pairs[0]->id == "ccif");
+  CHECK(pairs[1]->id == "ccif-2");
+  CHECK(holds(pairs[0]->note, "14 kHz and 15 kHz"));
+  const auto measured = [](const Figure& f) {
+    for (const Series& s : f.series) {
+      if (s.label == "d2 measured") return s.points;
+    }
+    return std::vector<FigurePoint>{};
+  };
+  const auto low = measured(*pairs[1]), high = measured(*pairs[0]);
+  REQUIRE(low.size() == high.size());
+  REQUIRE_FALSE(low.empty());
+  for (std::size_t i = 0; i < low.size(); ++i) {
+    CHECK(high[i].y == doctest::Approx(10.0 * low[i].y));
+  }
+}
+
+TEST_CASE("square and sine stands with its share of the standard's slope, DIM under its name") {
+  ReportData d = clean();
+  IntermodPoint p;
+  p.method = p.product = "square-sine";
+  p.drive = 4.0;
+  p.percent = 1.25;
+  p.db = -38.06;
+  p.expanded_u_db = 0.1;
+  d.curves.intermods.push_back(p);
+  const auto scalar = [&](const char* method, const char* figure, const char* state, double value,
+                          Cell drive) {
+    ScalarPoint s;
+    s.method = method;
+    s.figure = figure;
+    s.state = state;
+    s.value = value;
+    s.drive = drive;
+    s.value_unit = "1";
+    d.curves.scalars.push_back(s);
+  };
+  scalar("square-sine", "slope-fraction", "dim-30", 0.238, 4.0);
+  scalar("square-sine", "slope-fraction", "dim-100", 0.0715, 4.0);
+  scalar("square-sine", "band-limit", "-", 40976.0, 4.0);
+  scalar("dim-30", "dim", "-", 2.7, {});
+  const Section s = programme_section(d);
+  const auto& table = std::get<Table>(s.blocks.back());
+  REQUIRE(table.rows.size() == 2);
+  CHECK(table.rows[0][0] == "square and sine");
+  CHECK(holds(table.rows[0][2], "1.25"));
+  CHECK(table.rows[0][3] == "0.24");
+  CHECK(table.rows[0][4] == "0.07");
+  CHECK(table.rows[0][5] == "41.0");
+  CHECK(table.rows[1][0] == "DIM 30, external generator");
+  CHECK(holds(table.rows[1][2], "2.7"));
+}
+
 TEST_CASE("noise is drawn as an upper limit, other doubt hollow") {
   ReportData d = clean();
   int limits = 0, expected = 0;
