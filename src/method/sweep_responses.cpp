@@ -68,7 +68,21 @@ std::complex<double> line(std::span<const double> x, double angle) {
 
 using Spectrum = std::vector<std::complex<double>>;
 
-// The takes of a plan share one sweep: its inverse is kept from one to the next.
+// By real and imaginary parts: the compiler's way with complex numbers costs as much as a
+// transform.
+void multiply(std::complex<double>* spectrum, const Spectrum& by) {
+  auto* a = reinterpret_cast<double*>(spectrum);
+  const auto* b = reinterpret_cast<const double*>(by.data());
+  for (std::size_t k = 0; k < 2 * by.size(); k += 2) {
+    const double re = a[k] * b[k] - a[k + 1] * b[k + 1];
+    const double im = a[k] * b[k + 1] + a[k + 1] * b[k];
+    a[k] = re;
+    a[k + 1] = im;
+  }
+}
+
+// The takes of a plan share one sweep: its inverse, over the transform's length, is kept from one
+// to the next.
 std::shared_ptr<const Spectrum> inverse_of(const LogSweep& sweep, Hertz rate, std::size_t size) {
   struct Kept {
     std::array<double, 5> key{};
@@ -80,7 +94,9 @@ std::shared_ptr<const Spectrum> inverse_of(const LogSweep& sweep, Hertz rate, st
                        rate.value(), static_cast<double>(size)};
   const std::scoped_lock lock(mutex);
   if (!kept.inverse || kept.key != key) {
-    kept = {key, std::make_shared<const Spectrum>(sweep.inverse_spectrum(rate, size))};
+    Spectrum inverse = sweep.inverse_spectrum(rate, size);
+    for (auto& z : inverse) z /= static_cast<double>(size);  // of the transform back
+    kept = {key, std::make_shared<const Spectrum>(std::move(inverse))};
   }
   return kept.inverse;
 }
@@ -88,15 +104,13 @@ std::shared_ptr<const Spectrum> inverse_of(const LogSweep& sweep, Hertz rate, st
 }  // namespace
 
 SweepResponses::SweepResponses(const LogSweep& sweep, std::span<const double> block, Hertz rate)
-    : sweep_(sweep), rate_(rate) {
-  Spectrum spectrum = forward_fft(block);
-  const auto inverse = inverse_of(sweep, rate, block.size());
-  for (std::size_t k = 0; k < spectrum.size(); ++k) {
-    const std::complex<double> a = spectrum[k], b = (*inverse)[k];
-    spectrum[k] = {a.real() * b.real() - a.imag() * b.imag(),
-                   a.real() * b.imag() + a.imag() * b.real()};
-  }
-  impulse_ = inverse_fft(spectrum, block.size());
+    : sweep_(sweep), rate_(rate), size_(block.size()), impulse_(sample_buffer(block.size())) {
+  // Arrays of a sweep's length do not fit any cache: each is written once and read once.
+  const auto inverse = inverse_of(sweep, rate, size_);
+  const SpectrumBuffer spectrum = spectrum_buffer(inverse->size());
+  forward_fft(block, spectrum.get());
+  multiply(spectrum.get(), *inverse);
+  inverse_fft_times_n(spectrum.get(), impulse_.get(), size_);
 }
 
 OrderResponse SweepResponses::read(int order, std::span<const Hertz> fundamentals) const {
@@ -108,12 +122,12 @@ OrderResponse SweepResponses::read(int order, std::span<const Hertz> fundamental
   const double instant = -sweep_.lead(order).value() * rate;  // in samples, not whole
   const auto first = static_cast<long>(std::ceil(instant - w.before * rate));
   const auto last = static_cast<long>(std::floor(instant + w.after * rate));
-  const auto period = static_cast<long>(impulse_.size());
+  const auto period = static_cast<long>(size_);
   std::vector<double> cut(static_cast<std::size_t>(std::max(1L, last - first + 1)));
   auto from_sample = static_cast<std::size_t>(((first % period) + period) % period);
   for (double& x : cut) {
     x = impulse_[from_sample];
-    if (++from_sample == impulse_.size()) from_sample = 0;
+    if (++from_sample == size_) from_sample = 0;
   }
   const double rise = kStepShare * w.before * rate, fall = kStepShare * w.after * rate;
   const double from = static_cast<double>(first) - instant + w.before * rate;

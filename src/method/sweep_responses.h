@@ -7,6 +7,7 @@
 #include <span>
 #include <vector>
 
+#include "signal/fft.h"
 #include "signal/log_sweep.h"
 
 namespace kneeprint {
@@ -32,12 +33,13 @@ class SweepResponses {
   OrderResponse read(int order, std::span<const Hertz> fundamentals) const;
 
   /// Periodic impulse response of all orders; order n at -L ln n.
-  const std::vector<double>& impulse() const { return impulse_; }
+  std::span<const double> impulse() const { return {impulse_.get(), size_}; }
 
  private:
   LogSweep sweep_;
   Hertz rate_;
-  std::vector<double> impulse_;
+  std::size_t size_;
+  SampleBuffer impulse_;
 };
 
 }  // namespace kneeprint

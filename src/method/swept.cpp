@@ -85,12 +85,20 @@ double wrapped_degrees(double radians) {
 }
 
 std::vector<double> mean_block(const Waveform& take, const HoldLayout& hold, int first) {
-  std::vector<double> mean(hold.block, 0.0);
-  for (int b = first; b < hold.blocks; ++b) {
-    const std::size_t start = hold.first_block + static_cast<std::size_t>(b) * hold.block;
-    for (std::size_t i = 0; i < hold.block; ++i) mean[i] += take.samples[start + i];
+  // In pieces that stay in the cache until all blocks are in.
+  constexpr std::size_t kPiece = 4096;
+  const auto block = [&](int b) {
+    return take.samples.data() + hold.first_block + static_cast<std::size_t>(b) * hold.block;
+  };
+  std::vector<double> mean(block(first), block(first) + hold.block);
+  for (std::size_t start = 0; start < hold.block; start += kPiece) {
+    const std::size_t end = std::min(hold.block, start + kPiece);
+    for (int b = first + 1; b < hold.blocks; ++b) {
+      const double* x = block(b);
+      for (std::size_t i = start; i < end; ++i) mean[i] += x[i];
+    }
+    for (std::size_t i = start; i < end; ++i) mean[i] /= hold.blocks - first;
   }
-  for (double& x : mean) x /= hold.blocks - first;
   return mean;
 }
 

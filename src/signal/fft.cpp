@@ -21,17 +21,6 @@ using PlanPtr = std::unique_ptr<fftw_plan_s, PlanDeleter>;
 
 fftw_complex* raw(std::complex<double>* p) { return reinterpret_cast<fftw_complex*>(p); }
 
-struct ArrayFree {
-  void operator()(double* p) const { fftw_free(p); }
-};
-using Samples = std::unique_ptr<double[], ArrayFree>;
-
-Samples samples(std::size_t size) {
-  Samples p(fftw_alloc_real(size));
-  if (!p) throw std::bad_alloc();
-  return p;
-}
-
 bool is_aligned(const double* p) { return fftw_alignment_of(const_cast<double*>(p)) == 0; }
 
 // FFTW_ESTIMATE measures nothing, so the same length gives the same plan and the same bits every
@@ -40,7 +29,7 @@ bool is_aligned(const double* p) { return fftw_alignment_of(const_cast<double*>(
 // span begins.
 PlanPtr make_forward(int n) {
   const auto size = static_cast<std::size_t>(n);
-  const Samples in = samples(size);
+  const SampleBuffer in = sample_buffer(size);
   const SpectrumBuffer out = spectrum_buffer(size / 2 + 1);
   return PlanPtr(
       fftw_plan_dft_r2c_1d(n, in.get(), raw(out.get()), FFTW_ESTIMATE | FFTW_PRESERVE_INPUT));
@@ -49,7 +38,7 @@ PlanPtr make_forward(int n) {
 PlanPtr make_inverse(int n) {
   const auto size = static_cast<std::size_t>(n);
   const SpectrumBuffer in = spectrum_buffer(size / 2 + 1);
-  const Samples out = samples(size);
+  const SampleBuffer out = sample_buffer(size);
   return PlanPtr(fftw_plan_dft_c2r_1d(n, raw(in.get()), out.get(), FFTW_ESTIMATE));
 }
 
@@ -86,16 +75,24 @@ SpectrumBuffer spectrum_buffer(std::size_t size) {
   return p;
 }
 
+void FftFreeSamples::operator()(double* p) const { fftw_free(p); }
+
+SampleBuffer sample_buffer(std::size_t size) {
+  SampleBuffer p(fftw_alloc_real(size));
+  if (!p) throw std::bad_alloc();
+  return p;
+}
+
 void forward_fft(std::span<const double> x, std::complex<double>* spectrum) {
   static Plans plans(make_forward);
   const fftw_plan plan = plans.of(x.size());
-  Samples copied_in;
+  SampleBuffer copied_in;
   SpectrumBuffer copied_out;
   // FFTW takes a plain pointer but, with FFTW_PRESERVE_INPUT, leaves the input as it is.
   auto* in = const_cast<double*>(x.data());
   std::complex<double>* out = spectrum;
   if (!is_aligned(in)) {
-    copied_in = samples(x.size());
+    copied_in = sample_buffer(x.size());
     in = copied_in.get();
     std::copy(x.begin(), x.end(), in);
   }
@@ -114,18 +111,25 @@ std::vector<std::complex<double>> forward_fft(std::span<const double> x) {
   return out;
 }
 
-std::vector<double> inverse_fft(std::span<const std::complex<double>> spectrum, std::size_t size) {
+void inverse_fft_times_n(std::complex<double>* spectrum, double* samples, std::size_t size) {
   static Plans plans(make_inverse);
   const fftw_plan plan = plans.of(size);
-  if (spectrum.size() != size / 2 + 1) {
+  if (!is_aligned(samples) || !is_aligned(reinterpret_cast<double*>(spectrum))) {
+    throw std::invalid_argument("an inverse transform in place needs aligned arrays");
+  }
+  fftw_execute_dft_c2r(plan, raw(spectrum), samples);
+}
+
+std::vector<double> inverse_fft(std::span<const std::complex<double>> spectrum, std::size_t size) {
+  if (size > 0 && spectrum.size() != size / 2 + 1) {
     throw std::invalid_argument("an inverse transform of N samples needs N/2 + 1 spectrum values");
   }
-  const SpectrumBuffer in = spectrum_buffer(spectrum.size());  // c2r destroys its input
+  const SpectrumBuffer in = spectrum_buffer(spectrum.size());
   std::copy(spectrum.begin(), spectrum.end(), in.get());
-  const Samples result = samples(size);
-  fftw_execute_dft_c2r(plan, raw(in.get()), result.get());
+  const SampleBuffer samples = sample_buffer(size);
+  inverse_fft_times_n(in.get(), samples.get(), size);
   std::vector<double> out(size);
-  for (std::size_t n = 0; n < size; ++n) out[n] = result[n] / static_cast<double>(size);
+  for (std::size_t n = 0; n < size; ++n) out[n] = samples[n] / static_cast<double>(size);
   return out;
 }
 

@@ -26,6 +26,17 @@ SpectrumBuffer spectrum_buffer(std::size_t size);
 /// The same transform, the same bits, into x.size() / 2 + 1 values at `spectrum`.
 void forward_fft(std::span<const double> x, std::complex<double>* spectrum);
 
+/// Room for samples, likewise.
+struct FftFreeSamples {
+  void operator()(double* p) const;
+};
+using SampleBuffer = std::unique_ptr<double[], FftFreeSamples>;
+SampleBuffer sample_buffer(std::size_t size);
+
+/// The inverse times N, from size / 2 + 1 values into `size`; `spectrum` is destroyed. Both as the
+/// buffers above, or aligned like them (std::invalid_argument).
+void inverse_fft_times_n(std::complex<double>* spectrum, double* samples, std::size_t size);
+
 /// The inverse, divided by N. `spectrum` has size/2 + 1 values.
 std::vector<double> inverse_fft(std::span<const std::complex<double>> spectrum, std::size_t size);
 

@@ -1,7 +1,7 @@
 # SPDX-License-Identifier: GPL-3.0-or-later
-"""The peer in numpy or scipy, one take at a time: peer.py DIR WORKLOAD TIMES numpy|scipy
+"""The peer in numpy or scipy: peer.py DIR WORKLOAD TIMES numpy|scipy
 
-numpy: step by step, as one would write it. scipy: one real transform of all takes at once.
+numpy: take by take, as one would write it. scipy: one real transform of all takes at once.
 Prints the seconds for all takes, the first call and TIMES more."""
 import pathlib
 import sys

@@ -6,22 +6,28 @@ import statistics
 import subprocess
 import sys
 
+import folders
 
 BUILD, WORK = map(pathlib.Path, sys.argv[1:3])
 HERE = pathlib.Path(__file__).parent
 BENCH, PEER, TOOL = BUILD / "kneeprint_bench", BUILD / "kneeprint_bench_peer", BUILD / "kneeprint"
-ROUNDS, TIMES = 5, 9
-# name: what a reading is compared with; takes of both two-tone methods are added up
-WORKLOADS = {"steady: H1..H10, THD, THD+N": ["steady"], "two-tone: products": ["smpte", "ccif"]}
+ROUNDS = 5
+# Takes of both two-tone methods are added up.
+WORKLOADS = {
+    "60 steady takes of a second at 96 kHz: H1..H10, THD, THD+N": ["steady"],
+    "80 two-tone takes of a second at 96 kHz: products to order 5": ["smpte", "ccif"],
+    "a sweep of 20 s at 96 kHz, three times: responses of ten orders": ["sweep"],
+}
 
 
 def contestants(workload):
+    wisdom = WORK / f"{workload}.wisdom"
     return {
-        "C, estimated plan": [PEER, "time", WORK, workload, TIMES],
-        "C, stored plan": [PEER, "time", WORK, workload, TIMES, WORK / f"{workload}.wisdom"],
-        "kneeprint": [BENCH, "time", WORK, workload, TIMES],
-        "numpy": [sys.executable, HERE / "peer.py", WORK, workload, TIMES, "numpy"],
-        "scipy": [sys.executable, HERE / "peer.py", WORK, workload, TIMES, "scipy"],
+        "C, estimated plan": [PEER, "time", WORK, workload, 9],
+        "C, stored plan": [PEER, "time", WORK, workload, 9, wisdom],
+        "kneeprint": [BENCH, "time", WORK, workload, 9],
+        "numpy": [sys.executable, HERE / "peer.py", WORK, workload, 2, "numpy"],
+        "scipy": [sys.executable, HERE / "peer.py", WORK, workload, 4, "scipy"],
     }
 
 
@@ -52,19 +58,24 @@ def compare(title, workloads):
             for sums, values in zip((first, warm, figures), zip(*parts)):
                 sums[name].append(sum(values))
     ms = {n: (1e3 * statistics.median(first[n]), 1e3 * statistics.median(warm[n])) for n in names}
-    print(f"\n{title} (one thread, compute only, medians of {ROUNDS} rounds)")
-    print(f"{'':20}{'first call':>12}{'warm':>10}{'figures':>9}   kneeprint / this: first, warm")
+    print(f"\n{title}\n{'':20}{'first call':>13}{'warm':>12}{'figures':>9}   kneeprint / this: first, warm")
     ours = ms["kneeprint"]
     for n in names:
-        print(f"{n:20}{ms[n][0]:9.2f} ms{ms[n][1]:7.2f} ms{figures[n][0]:9d}"
+        print(f"{n:20}{ms[n][0]:10.2f} ms{ms[n][1]:9.2f} ms{figures[n][0]:9d}"
               f"{ours[0] / ms[n][0]:14.2f}{ours[1] / ms[n][1]:8.2f}")
-    print(f"first call: {ours[0] / ms['C, estimated plan'][0]:.2f} x C with estimated plans, planning "
-          f"included; warm: {ours[1] / ms['C, stored plan'][1]:.2f} x C with stored plans")
+    print(f"first call, planning included, over C with an estimated plan: "
+          f"{ours[0] / ms['C, estimated plan'][0]:.2f}; warm, over C with a stored plan: "
+          f"{ours[1] / ms['C, stored plan'][1]:.2f}, with an estimated one: "
+          f"{ours[1] / ms['C, estimated plan'][1]:.2f}", flush=True)
 
 
-print(f"{os.cpu_count()} cores")
+print(f"Processor time on one thread, compute only, medians of {ROUNDS} rounds in turns; Kneeprint with all "
+      f"uncertainties. {os.cpu_count()} cores, load {os.getloadavg()[0]:.1f}", flush=True)
 run([BENCH, "make", WORK])
 for title, workloads in WORKLOADS.items():
     for w in workloads:
-        run([PEER, "plan", WORK, w, WORK / f"{w}.wisdom"])
+        if not (WORK / f"{w}.wisdom").exists():
+            print(f"measuring the peer's plan for {w} (once)", flush=True)
+            run([PEER, "plan", WORK, w, WORK / f"{w}.wisdom"])
     compare(title, workloads)
+folders.grow(TOOL, WORK)
