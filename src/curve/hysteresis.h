@@ -4,9 +4,10 @@
 // At each frequency and drive with both directions gain and H2 .. H5 (levels over the drive) are
 // compared, down minus up. The uncertainty is type A alone: calibration and rig floor are common to
 // both and cancel; a drift of the gain that the reference tone shows
-// (curve/stability.h) is added, once for each direction. The largest difference of each figure, counted in its own standard
-// uncertainties, is reported; it is beyond them when it passes Student's quantile at 5 % divided by
-// the number of all comparisons of the measurement (Bonferroni).
+// (curve/stability.h) is added, once for each direction. The largest difference of each figure,
+// counted in its own standard uncertainties, is reported; it is beyond them when it passes
+// Student's quantile at 5 % divided by the number of all comparisons of the measurement
+// (Bonferroni).
 #pragma once
 
 #include "curve/points.h"

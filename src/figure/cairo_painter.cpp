@@ -509,9 +509,9 @@ std::string svg(const Figure& figure, FigureSize size) {
 
 void write_png(const Figure& figure, const std::filesystem::path& file, FigureSize size,
                double scale) {
-  CairoSurface surface(cairo_image_surface_create(CAIRO_FORMAT_RGB24,
-                                             static_cast<int>(std::lround(size.width * scale)),
-                                             static_cast<int>(std::lround(size.height * scale))));
+  CairoSurface surface(cairo_image_surface_create(
+      CAIRO_FORMAT_RGB24, static_cast<int>(std::lround(size.width * scale)),
+      static_cast<int>(std::lround(size.height * scale))));
   {
     Context context(cairo_create(surface.get()));
     cairo_scale(context.get(), scale, scale);

@@ -32,11 +32,11 @@ struct JournalTake {
   double delay_samples = 0.0;  ///< fraction left after the file was aligned to its stimulus
   int attempts = 1;            ///< plays needed (dropouts repeat a take)
   // How the seconds of sound were spent; 0 in journals that do not say.
-  double sound_s = 0.0;      ///< of the stimulus, ramps and silence included
-  double read_s = 0.0;       ///< of it, what the reading used
-  double settling_s = 0.0;   ///< of that, left out of the averages
-  double tail_s = 0.0;       ///< recorded after the stimulus, for the rig's delay
-  double discarded_s = 0.0;  ///< earlier, shorter plays of this take
+  double sound_s = 0.0;        ///< of the stimulus, ramps and silence included
+  double read_s = 0.0;         ///< of it, what the reading used
+  double settling_s = 0.0;     ///< of that, left out of the averages
+  double tail_s = 0.0;         ///< recorded after the stimulus, for the rig's delay
+  double discarded_s = 0.0;    ///< earlier, shorter plays of this take
   std::string started, ended;  ///< UTC
   std::string guard;           ///< "" or the guard's reason
 };
