@@ -54,7 +54,8 @@ class BlockSpectra {
   Noise noise_around(std::size_t bin, int first) const;
   /// Amplitude of the hum that must be reckoned with on `bin`, where that is a multiple of 50 or 60
   /// Hz (the difference tone of 19 and 20 kHz is): rms of the multiples around it, noise taken off;
-  /// 0 where they show none.
+  /// 0 where they show none. Above the 50th multiple, where hardly any mains has lines (IEC
+  /// 61000-4-7 ends at that order or earlier, from memory), only hum that is certain counts.
   double hum_at(std::size_t bin, int first, const Noise& noise) const;
 
   /// Mean square of everything from bin `low` to `high` inclusive, per block.
