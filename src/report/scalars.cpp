@@ -24,12 +24,13 @@ std::string value_text(const ScalarPoint& p) {
   return with_u(p.value, p.expanded_u, 2);
 }
 
-/// In dB: finer than 0.005 dB is no news to a reader of tables, and stands in scalars.csv.
-std::string decibel_text(const ScalarPoint& p) {
-  constexpr double kFinest = 0.005;
-  ScalarPoint coarse = p;
-  if (coarse.expanded_u) coarse.expanded_u = std::max(*coarse.expanded_u, kFinest);
-  return value_text(coarse);
+/// Finer than 0.01 is no news to a reader of tables, and stands in scalars.csv.
+std::string coarse_text(const ScalarPoint& p) {
+  constexpr double kFinest = 0.01;
+  const bool is_fine = p.expanded_u && *p.expanded_u < 5.0 * kFinest;
+  if (!p.value || !is_fine || p.flag == Flag::noise) return value_text(p);
+  const double u = std::ceil(std::max(*p.expanded_u, kFinest) / kFinest - 1e-9) * kFinest;
+  return fixed_text(*p.value, 2) + " ± " + fixed_text(u, 2);
 }
 
 const ScalarPoint* find(const Curves& curves, const std::string& method, const std::string& figure,
@@ -95,7 +96,7 @@ Table multitone_table(const ReportData& data) {
     std::vector<std::string> row{fixed_text(drive, 2)};
     for (const auto& [id, ignored] : kFigures) {
       const auto at = figures.find(id);
-      row.push_back(at == figures.end() ? kDash : decibel_text(*at->second));
+      row.push_back(at == figures.end() ? kDash : coarse_text(*at->second));
     }
     t.rows.push_back(std::move(row));
   }

@@ -103,7 +103,7 @@ TEST_CASE("noise, multitone and memory: values with their uncertainty, limits as
   CHECK(text_of(memory_section(data)).find("< 0.02") != std::string::npos);
   const std::string programme = text_of(programme_section(data));
   CHECK(programme.find("18.00|") != programme.npos);
-  CHECK(programme.find("65.000 ± 0.040|") != programme.npos);
+  CHECK(programme.find("65.00 ± 0.04|") != programme.npos);
 }
 
 TEST_CASE("products say what they fall on") {
