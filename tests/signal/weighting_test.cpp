@@ -17,7 +17,7 @@ double db(std::complex<double> h) { return 20.0 * std::log10(std::abs(h)); }
 constexpr double kNone = INFINITY;
 
 // IEC 61672-1:2013: table 3 (A column and class 1 acceptance limits; the limits from memory) and
-// Annex E's formula, evaluated to four decimals by an independent transcription. Frequencies are
+// Annex E's formula, evaluated to four decimals independently of the code. Frequencies are
 // 10^(3 + k / 10) Hz, k = -20 .. 13.
 struct ARow {
   double analytic, table, above, below;
